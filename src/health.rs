@@ -1,0 +1,1 @@
+//! Counters of everything that did not go as planned.

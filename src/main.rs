@@ -1,0 +1,3 @@
+//! The `beltwright` program.
+
+fn main() {}

@@ -1,0 +1,111 @@
+//! The taught silhouette, where a part lies, and how far it is from the taught one.
+
+mod verdict;
+
+pub use verdict::{Reason, Reasons, Verdict};
+
+use crate::stage::{Region, Run};
+
+/// A taught silhouette: for every pixel the share of good parts that cover it.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Silhouette {
+    /// Columns.
+    pub width_px: usize,
+    /// Rows.
+    pub height_px: usize,
+    /// Edge length of a pixel on the belt.
+    pub mm_per_px: f64,
+    /// Row by row; 255 is covered by all good parts. The silhouette proper is value > 127 (the majority).
+    pub share: Vec<u8>,
+}
+
+/// Where a silhouette lies in the picture. Pixel (0, 0) has its centre at (0.0, 0.0).
+#[derive(Clone, Copy, Debug, Default, PartialEq)]
+pub struct Pose {
+    /// Column of the silhouette's centroid.
+    pub x_px: f64,
+    /// Row of the silhouette's centroid.
+    pub y_px: f64,
+    /// Turned from the x axis towards the y axis (clockwise as the picture is looked at), 0 to 360.
+    pub angle_deg: f64,
+    /// Mirrored (x of the silhouette negated) before it was turned.
+    pub flipped: bool,
+}
+
+/// How deep or how far, and where that is.
+#[derive(Clone, Copy, Debug, Default, PartialEq)]
+pub struct Depth {
+    /// Distance between pixel centres; 0 where there is no such pixel.
+    pub px: f64,
+    /// The pixel where it is worst (x, y), in region-of-interest pixels.
+    pub at: Option<(i32, i32)>,
+}
+
+/// What one shape's limits are, in pixels; `None` means not limited. Both ends belong to the good ones.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Limits {
+    /// Deepest good bite.
+    pub missing_px: f64,
+    /// Farthest good burr.
+    pub excess_px: f64,
+    /// Whether a face-down part is rejected.
+    pub reject_flipped: bool,
+    /// Pixels.
+    pub area_px: Option<[f64; 2]>,
+    /// Maximum Feret diameter.
+    pub length_px: Option<[f64; 2]>,
+    /// Minimum Feret diameter.
+    pub width_px: Option<[f64; 2]>,
+    /// Number of holes.
+    pub holes: Option<[u32; 2]>,
+    /// Pixels of A minus A eroded by 3x3.
+    pub boundary_px: Option<[f64; 2]>,
+    /// Number of skeleton branches longer than `branch_above_px`.
+    pub branches: Option<[u32; 2]>,
+    /// How long a branch must be to count.
+    pub branch_above_px: f64,
+}
+
+/// What is the same for all shapes.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Common {
+    /// Missing or excess patches (8-connected) with fewer pixels do not count.
+    pub flaw_below_px: f64,
+    /// A part that shares less than this with every shape (overlap over union) is unknown.
+    pub fit_at_least: f64,
+}
+
+/// One view of a whole part, judged.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Judged {
+    /// Index of the best-fitting shape.
+    pub shape: usize,
+    /// Where that shape lies.
+    pub pose: Pose,
+    /// Overlap over union with it.
+    pub fit: f64,
+    /// The deepest bite.
+    pub missing: Depth,
+    /// The farthest burr.
+    pub excess: Depth,
+    /// Everything against it.
+    pub reasons: Reasons,
+    /// How near the limits: the largest share of a limit that is used up. At most 1 is within; infinite where a reason
+    /// has no figure (touching, flipped, unknown).
+    pub severity: f64,
+}
+
+/// Judges regions against the taught shapes, with its own buffers.
+pub struct Judge;
+
+impl Judge {
+    /// `shapes` must have the picture's scale.
+    pub fn new(_shapes: Vec<(Silhouette, Limits)>, _common: Common) -> Self {
+        todo!()
+    }
+
+    /// Judges one whole region; `runs` are its own, sorted by row, then column.
+    pub fn judge(&mut self, _region: &Region, _runs: &[Run]) -> Judged {
+        todo!()
+    }
+}
