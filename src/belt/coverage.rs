@@ -23,6 +23,7 @@ pub struct Coverage {
     /// Everything up to here was seen, is in `gaps`, or was taken as unseen already.
     settled_mm: Option<f64>,
     gaps: VecDeque<Stretch>,
+    ended: bool,
 }
 
 impl Coverage {
@@ -47,13 +48,14 @@ impl Coverage {
     pub fn next_mm(&self) -> Option<f64> {
         match self.gaps.front() {
             Some(gap) => Some(gap.to_mm.min(gap.from_mm + STEP_MM)),
+            None if self.ended => None,
             None => self.settled_mm.map(|settled_mm| settled_mm + STEP_MM),
         }
     }
 
-    /// Takes the next stretch of unseen belt, at most [`STEP_MM`] long, that lies before `decided_mm`.
-    pub fn take_unseen(&mut self, decided_mm: f64) -> Option<Stretch> {
-        let to_mm = self.next_mm().filter(|&to_mm| to_mm <= decided_mm)?;
+    /// Takes the stretch whose end [`Coverage::next_mm`] told.
+    pub fn take_unseen(&mut self) -> Option<Stretch> {
+        let to_mm = self.next_mm()?;
         if let Some(gap) = self.gaps.front_mut() {
             let from_mm = std::mem::replace(&mut gap.from_mm, to_mm);
             if gap.from_mm >= gap.to_mm {
@@ -63,6 +65,11 @@ impl Coverage {
         }
         let from_mm = self.settled_mm.replace(to_mm)?;
         Some(Stretch { from_mm, to_mm })
+    }
+
+    /// The belt behind what was seen so far does not count.
+    pub fn end(&mut self) {
+        self.ended = true;
     }
 }
 
@@ -76,7 +83,8 @@ mod tests {
 
     fn drain(coverage: &mut Coverage, decided_mm: f64) -> Vec<Stretch> {
         let mut joined: Vec<Stretch> = Vec::new();
-        while let Some(piece) = coverage.take_unseen(decided_mm) {
+        while coverage.next_mm().is_some_and(|to_mm| to_mm <= decided_mm) {
+            let piece = coverage.take_unseen().unwrap();
             match joined.last_mut() {
                 Some(last) if last.to_mm == piece.from_mm => last.to_mm = piece.to_mm,
                 _ => joined.push(piece),

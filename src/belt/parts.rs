@@ -19,6 +19,8 @@ pub struct Part {
     pub along_mm: f64,
     /// Centroid across the belt.
     pub across_mm: f64,
+    /// Area in the view that speaks for it.
+    pub area_mm2: f64,
     /// Everything that was ever seen of it.
     pub extent: Extent,
     /// Capture time of its first view.
@@ -278,6 +280,7 @@ fn final_verdict(track: &mut Track, number: u64, now: Micros) -> Part {
         number,
         along_mm,
         across_mm,
+        area_mm2: view.unwrap_or(latest).area_mm2,
         extent,
         first_us,
         decided_us: now,
@@ -335,6 +338,7 @@ mod tests {
             },
             along_mm: lead_mm + 19.0,
             across_mm: 29.0,
+            area_mm2: 700.0,
             cut: Cut::default(),
             judged: Some(judged(severity)),
         }
@@ -352,6 +356,7 @@ mod tests {
             },
             along_mm: (lead_mm + trail_mm) / 2.0,
             across_mm: (across.0 + across.1) / 2.0,
+            area_mm2: 20.0,
             cut,
             judged: None,
         }

@@ -90,6 +90,8 @@ pub struct View {
     pub along_mm: f64,
     /// Its centroid across the belt.
     pub across_mm: f64,
+    /// Area of what is seen of it.
+    pub area_mm2: f64,
     /// The picture's edges that cut through it.
     pub cut: Cut,
     /// The verdict on it; a cut region has none.
