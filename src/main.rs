@@ -1,3 +1,15 @@
-//! The `beltwright` program.
+//! The `beltwright` program: parse, run, exit code.
 
-fn main() {}
+use std::process::ExitCode;
+
+use clap::Parser;
+
+use beltwright::cli::{Cli, code_of};
+
+fn main() -> ExitCode {
+    let outcome = Cli::parse().run();
+    if let Err(error) = &outcome {
+        eprintln!("{error:#}");
+    }
+    ExitCode::from(code_of(&outcome))
+}

@@ -97,6 +97,19 @@ impl Scale {
     }
 }
 
+/// An upright rectangle of pixels.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, Serialize)]
+pub struct Window {
+    /// First column.
+    pub left_px: usize,
+    /// First row.
+    pub top_px: usize,
+    /// Columns.
+    pub width_px: usize,
+    /// Rows.
+    pub height_px: usize,
+}
+
 #[cfg(test)]
 mod tests {
     use super::*;

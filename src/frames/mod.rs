@@ -1,6 +1,7 @@
 //! Gray frames and where they come from.
 
 use crate::units::Micros;
+pub use crate::units::Window;
 
 /// One 8-bit gray picture of the belt, rows from top to bottom without padding.
 #[derive(Clone, Debug, Default, PartialEq)]
@@ -57,19 +58,6 @@ impl<'a> Gray<'a> {
             stride_px: self.stride_px,
         }
     }
-}
-
-/// An upright rectangle of pixels.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
-pub struct Window {
-    /// First column.
-    pub left_px: usize,
-    /// First row.
-    pub top_px: usize,
-    /// Columns.
-    pub width_px: usize,
-    /// Rows.
-    pub height_px: usize,
 }
 
 /// Anything that yields frames in the order of their capture times.

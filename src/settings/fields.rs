@@ -207,6 +207,7 @@ pub struct Shape {
     #[schemars(length(min = 1, max = 40))]
     pub name: String,
     /// The taught shape, made by `teach`; a relative path starts at this settings file.
+    #[schemars(length(min = 1, max = 4096))]
     pub file: PathBuf,
     /// The deepest bite that is still good.
     #[schemars(range(min = 0.0, max = 1000.0))]
@@ -219,24 +220,31 @@ pub struct Shape {
     pub face_down: FaceDown,
     /// Where good parts of this shape go; left out, they stay on the belt.
     #[serde(default, skip_serializing_if = "Option::is_none")]
+    #[schemars(length(min = 1, max = 40))]
     pub outlet: Option<String>,
     /// Area, `[low, high]`.
     #[serde(default, skip_serializing_if = "Option::is_none")]
+    #[schemars(inner(range(min = 0.0, max = 1000000.0)))]
     pub area_mm2: Option<[f64; 2]>,
     /// Longest extent (maximum Feret diameter), `[low, high]`.
     #[serde(default, skip_serializing_if = "Option::is_none")]
+    #[schemars(inner(range(min = 0.0, max = 10000.0)))]
     pub length_mm: Option<[f64; 2]>,
     /// Narrowest extent (minimum Feret diameter), `[low, high]`.
     #[serde(default, skip_serializing_if = "Option::is_none")]
+    #[schemars(inner(range(min = 0.0, max = 10000.0)))]
     pub width_mm: Option<[f64; 2]>,
     /// Number of holes, `[low, high]`.
     #[serde(default, skip_serializing_if = "Option::is_none")]
+    #[schemars(inner(range(min = 0, max = 10000)))]
     pub holes: Option<[u32; 2]>,
     /// Length of the boundary (pixels that touch the outside), `[low, high]`.
     #[serde(default, skip_serializing_if = "Option::is_none")]
+    #[schemars(inner(range(min = 0.0, max = 100000.0)))]
     pub boundary_mm: Option<[f64; 2]>,
     /// Number of skeleton branches longer than `branch_above_mm`, `[low, high]`.
     #[serde(default, skip_serializing_if = "Option::is_none")]
+    #[schemars(inner(range(min = 0, max = 10000)))]
     pub branches: Option<[u32; 2]>,
     /// How long a skeleton branch must be to count.
     #[serde(default, skip_serializing_if = "Option::is_none")]
@@ -287,6 +295,7 @@ pub struct Outlet {
 #[serde(deny_unknown_fields)]
 pub struct Reject {
     /// The outlet that rejected parts and unseen belt go to.
+    #[schemars(length(min = 1, max = 40))]
     pub outlet: String,
     /// Whether `--armed` may send signals at all.
     #[serde(default)]
