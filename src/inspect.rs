@@ -2,70 +2,48 @@
 //! may be inspected in any order and on any thread.
 
 use crate::belt::{Cut, Extent, Stretch, View};
-use crate::frames::{Frame, Window};
-use crate::settings::Travel;
+use crate::frames::Frame;
+use crate::settings::{Geometry, Travel};
 use crate::shape::{Judge, Judged};
 use crate::stage::{Region, Stage};
-use crate::units::{Micros, Scale};
+use crate::units::Micros;
 
-/// How the picture lies on the belt.
-#[derive(Clone, Copy, Debug, PartialEq)]
-pub struct Geometry {
-    /// Size of a pixel.
-    pub scale: Scale,
-    /// Which way parts move.
-    pub travel: Travel,
-    /// Columns of the whole picture.
-    pub picture_width_px: usize,
-    /// The region of interest.
-    pub window: Window,
+/// The belt that the region of interest shows when the belt reads 0; other readings move it along.
+pub fn seen_at_zero(geometry: &Geometry) -> Stretch {
+    along(geometry, 0.0, geometry.window.width_px as f64)
 }
 
-impl Geometry {
-    /// Distance from the picture's upstream edge to column boundary `x_px` of the region of interest.
-    fn behind_upstream_mm(&self, x_px: f64) -> f64 {
-        let x_px = x_px + self.window.left_px as f64;
-        self.scale.mm(match self.travel {
-            Travel::Right => x_px,
-            Travel::Left => self.picture_width_px as f64 - x_px,
-        })
+fn along(geometry: &Geometry, x_min: f64, x_max: f64) -> Stretch {
+    let [a, b] = [x_min, x_max].map(|x_px| -geometry.behind_upstream_mm(x_px));
+    Stretch {
+        from_mm: a.min(b),
+        to_mm: a.max(b),
     }
+}
 
-    /// Distance from the picture's top edge to row boundary `y_px` of the region of interest.
-    fn below_top_mm(&self, y_px: f64) -> f64 {
-        self.scale.mm(y_px + self.window.top_px as f64)
+/// Where a region lies when the belt reads 0.
+fn extent(geometry: &Geometry, region: &Region) -> Extent {
+    let along = along(geometry, region.x_min.into(), region.x_max.into());
+    Extent {
+        lead_mm: along.from_mm,
+        trail_mm: along.to_mm,
+        top_mm: geometry.below_top_mm(region.y_min.into()),
+        bottom_mm: geometry.below_top_mm(region.y_max.into()),
     }
+}
 
-    /// The belt that the region of interest shows when the belt reads 0; other readings move it along.
-    pub fn seen_at_zero(&self) -> Stretch {
-        self.along(0.0, self.window.width_px as f64)
-    }
-
-    fn along(&self, x_min: f64, x_max: f64) -> Stretch {
-        let (a, b) = (-self.behind_upstream_mm(x_min), -self.behind_upstream_mm(x_max));
-        Stretch { from_mm: a.min(b), to_mm: a.max(b) }
-    }
-
-    /// Where a region lies when the belt reads 0.
-    fn extent(&self, region: &Region) -> Extent {
-        let along = self.along(region.x_min.into(), region.x_max.into());
-        Extent {
-            lead_mm: along.from_mm,
-            trail_mm: along.to_mm,
-            top_mm: self.below_top_mm(region.y_min.into()),
-            bottom_mm: self.below_top_mm(region.y_max.into()),
-        }
-    }
-
-    fn cut(&self, region: &Region) -> Cut {
-        let left = region.x_min == 0;
-        let right = region.x_max as usize == self.window.width_px;
-        let (upstream, downstream) = match self.travel {
-            Travel::Right => (left, right),
-            Travel::Left => (right, left),
-        };
-        let side = region.y_min == 0 || region.y_max as usize == self.window.height_px;
-        Cut { upstream, downstream, side }
+fn cut(geometry: &Geometry, region: &Region) -> Cut {
+    let left = region.x_min == 0;
+    let right = region.x_max as usize == geometry.window.width_px;
+    let (upstream, downstream) = match geometry.travel {
+        Travel::Right => (left, right),
+        Travel::Left => (right, left),
+    };
+    let side = region.y_min == 0 || region.y_max as usize == geometry.window.height_px;
+    Cut {
+        upstream,
+        downstream,
+        side,
     }
 }
 
@@ -123,7 +101,11 @@ pub struct Inspector {
 impl Inspector {
     /// `stage` must be planned for the size of `geometry.window`.
     pub fn new(geometry: Geometry, stage: Stage, judge: Judge) -> Self {
-        Self { geometry, stage, judge }
+        Self {
+            geometry,
+            stage,
+            judge,
+        }
     }
 
     /// Looks at `frame`, which must have the size that the settings state, and fills `look`.
@@ -134,10 +116,10 @@ impl Inspector {
         look.specks = scene.specks;
         look.spots.clear();
         for region in &scene.regions {
-            let cut = self.geometry.cut(region);
+            let cut = cut(&self.geometry, region);
             let runs = &scene.runs[region.runs.clone()];
             look.spots.push(Spot {
-                extent: self.geometry.extent(region),
+                extent: extent(&self.geometry, region),
                 along_mm: -self.geometry.behind_upstream_mm(region.centroid_x + 0.5),
                 across_mm: self.geometry.below_top_mm(region.centroid_y + 0.5),
                 area_mm2: self.geometry.scale.mm2(region.area_px as f64),
@@ -151,13 +133,19 @@ impl Inspector {
 #[cfg(test)]
 mod tests {
     use super::*;
+    use crate::units::{Scale, Window};
 
     fn geometry(travel: Travel) -> Geometry {
         Geometry {
             scale: Scale { mm_per_px: 0.25 },
             travel,
             picture_width_px: 640,
-            window: Window { left_px: 40, top_px: 20, width_px: 560, height_px: 400 },
+            window: Window {
+                left_px: 40,
+                top_px: 20,
+                width_px: 560,
+                height_px: 400,
+            },
         }
     }
 
@@ -180,25 +168,31 @@ mod tests {
     /// `along_mm = belt_mm - (px from the upstream edge) * mm_per_px`; the leading edge has the smaller number.
     #[test]
     fn the_leading_edge_is_the_one_farther_from_the_upstream_edge() {
-        let right = geometry(Travel::Right).extent(&region(0, 100));
+        let right = extent(&geometry(Travel::Right), &region(0, 100));
         assert_eq!((right.lead_mm, right.trail_mm), (-35.0, -10.0));
         assert_eq!((right.top_mm, right.bottom_mm), (6.0, 7.0));
-        let left = geometry(Travel::Left).extent(&region(0, 100));
+        let left = extent(&geometry(Travel::Left), &region(0, 100));
         assert_eq!((left.lead_mm, left.trail_mm), (-150.0, -125.0));
     }
 
     #[test]
     fn the_region_of_interest_is_what_a_frame_covers() {
-        let seen = geometry(Travel::Right).seen_at_zero();
+        let seen = seen_at_zero(&geometry(Travel::Right));
         assert_eq!((seen.from_mm, seen.to_mm), (-150.0, -10.0));
     }
 
     #[test]
     fn edges_are_told_by_the_way_parts_travel() {
-        let entering = Cut { upstream: true, ..Cut::default() };
-        assert_eq!(geometry(Travel::Right).cut(&region(0, 9)), entering);
-        assert_eq!(geometry(Travel::Left).cut(&region(500, 560)), entering);
-        let side = Region { y_max: 400, ..region(5, 9) };
-        assert!(geometry(Travel::Right).cut(&side).side);
+        let entering = Cut {
+            upstream: true,
+            ..Cut::default()
+        };
+        assert_eq!(cut(&geometry(Travel::Right), &region(0, 9)), entering);
+        assert_eq!(cut(&geometry(Travel::Left), &region(500, 560)), entering);
+        let side = Region {
+            y_max: 400,
+            ..region(5, 9)
+        };
+        assert!(cut(&geometry(Travel::Right), &side).side);
     }
 }

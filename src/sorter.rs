@@ -5,9 +5,9 @@
 
 use crate::belt::{Coverage, Gate, Motion, Part, Parts, Stretch, View};
 use crate::health::Health;
-use crate::inspect::Look;
-use crate::reject::{Planner, Switch};
-use crate::settings::Policy;
+use crate::inspect::{Look, seen_at_zero};
+use crate::reject::{Loss, Planner, Switch};
+use crate::settings::{Policy, Settings};
 use crate::shape::{Reason, Verdict};
 use crate::units::Micros;
 
@@ -30,6 +30,40 @@ pub struct Plan {
     pub partial: Policy,
     /// What happens to unseen belt.
     pub unseen: Policy,
+}
+
+/// What the picture alone may move a part's edges from one view to the next.
+const GATE_PX: f64 = 3.0;
+
+impl Plan {
+    /// What the settings amount to. Their outlets' names were checked when they were loaded.
+    ///
+    /// # Panics
+    /// When a name has no outlet.
+    pub fn of(settings: &Settings) -> Self {
+        let outlet = |name: &String| {
+            settings
+                .outlet_named(name)
+                .expect("the loader checks outlet names")
+        };
+        Self {
+            speed_mm_s: settings.belt.speed_mm_s,
+            gate: Gate {
+                base_mm: settings.scale().mm(GATE_PX),
+                drift_mm_s: settings.belt.speed_mm_s * settings.speed_tolerance(),
+            },
+            seen_at_zero: seen_at_zero(&settings.geometry()),
+            decision_mm: settings.decision_mm(),
+            reject_outlet: outlet(&settings.reject.outlet),
+            shape_outlets: settings
+                .shapes
+                .iter()
+                .map(|shape| shape.outlet.as_ref().map(outlet))
+                .collect(),
+            partial: settings.judge.partial,
+            unseen: settings.belt.unseen,
+        }
+    }
 }
 
 /// Why the sorter stopped by itself.
@@ -56,6 +90,8 @@ pub enum Event {
     Unseen(Stretch, Micros),
     /// Outlets switch.
     Switch(Switch),
+    /// Belt that should have gone to an outlet did not get there, or not in time.
+    Lost(Loss),
     /// The sorter stopped: every outlet is off and stays off.
     Stopped(Cause, Micros),
 }
@@ -130,6 +166,9 @@ impl Sorter {
         if self.stopped {
             return None;
         }
+        if let Some(loss) = self.planner.next_loss() {
+            return Some(Event::Lost(loss));
+        }
         if let Some(cause) = self.stopping {
             return Some(self.stop(cause));
         }
@@ -154,7 +193,11 @@ impl Sorter {
     pub fn next_due(&self) -> Option<Micros> {
         let decision = self.next_decision().map(|(at, _)| at);
         let switch = self.planner.next_due(&self.motion);
-        [decision, switch].into_iter().flatten().min().filter(|_| !self.stopped)
+        [decision, switch]
+            .into_iter()
+            .flatten()
+            .min()
+            .filter(|_| !self.stopped)
     }
 
     /// What was counted.
@@ -173,7 +216,11 @@ impl Sorter {
     }
 
     fn next_decision(&self) -> Option<(Micros, Next)> {
-        let at = |mm: f64| self.motion.time_of(mm + self.plan.decision_mm).max(self.latest_us);
+        let at = |mm: f64| {
+            self.motion
+                .time_of(mm + self.plan.decision_mm)
+                .max(self.latest_us)
+        };
         let part = self.parts.next_mm();
         let unseen = self.coverage.next_mm();
         match (part, unseen) {
@@ -193,41 +240,62 @@ impl Sorter {
     }
 
     fn decide_part(&mut self) -> Event {
-        let mut part = self.parts.decide(self.latest_us).expect("next_mm() saw a part");
+        let mut part = self
+            .parts
+            .decide(self.latest_us)
+            .expect("next_mm() saw a part");
         self.health.parts += 1;
         if part.reasons.has(Reason::Partial) {
             match self.plan.partial {
                 Policy::Reject => {}
                 Policy::Keep => part.verdict = Verdict::Keep,
-                Policy::Stop => self.stopping = Some(Cause::Partial { along_mm: part.along_mm }),
+                Policy::Stop => {
+                    self.stopping = Some(Cause::Partial {
+                        along_mm: part.along_mm,
+                    })
+                }
             }
         }
         let outlet = match part.verdict {
             Verdict::Reject => Some(self.plan.reject_outlet),
-            Verdict::Keep => part.judged.and_then(|judged| self.plan.shape_outlets[judged.shape]),
+            Verdict::Keep => part
+                .judged
+                .and_then(|judged| self.plan.shape_outlets[judged.shape]),
         };
         if let Some(outlet) = outlet {
-            self.planner.add(outlet, part.extent.lead_mm, part.extent.trail_mm);
+            self.open(outlet, part.extent.lead_mm, part.extent.trail_mm);
         }
         Event::Part(part, outlet)
     }
 
     fn decide_unseen(&mut self) -> Event {
-        let stretch = self.coverage.take_unseen().expect("next_mm() saw a stretch");
+        let stretch = self
+            .coverage
+            .take_unseen()
+            .expect("next_mm() saw a stretch");
         self.health.unseen_mm += stretch.to_mm - stretch.from_mm;
         match self.plan.unseen {
             Policy::Reject => {
-                self.planner.add(self.plan.reject_outlet, stretch.from_mm, stretch.to_mm);
+                self.open(self.plan.reject_outlet, stretch.from_mm, stretch.to_mm);
             }
             Policy::Keep => {}
-            Policy::Stop => self.stopping = Some(Cause::Unseen { along_mm: stretch.from_mm }),
+            Policy::Stop => {
+                self.stopping = Some(Cause::Unseen {
+                    along_mm: stretch.from_mm,
+                })
+            }
         }
         Event::Unseen(stretch, self.latest_us)
     }
 
+    fn open(&mut self, outlet: usize, from_mm: f64, to_mm: f64) {
+        self.planner
+            .add(self.latest_us, &self.motion, outlet, from_mm, to_mm);
+    }
+
     /// First the all-off, then the word that it stopped.
     fn stop(&mut self, cause: Cause) -> Event {
-        if let Some(switch) = self.planner.finish(self.latest_us) {
+        if let Some(switch) = self.planner.finish(self.latest_us, &self.motion) {
             return Event::Switch(switch);
         }
         self.stopped = true;

@@ -36,7 +36,9 @@ fn used(source: &str) -> Vec<String> {
         .collect::<Vec<_>>()
         .join("\n");
     let ident = |text: &str| -> String {
-        text.chars().take_while(|c| c.is_alphanumeric() || *c == '_').collect()
+        text.chars()
+            .take_while(|c| c.is_alphanumeric() || *c == '_')
+            .collect()
     };
     let mut names = Vec::new();
     for (at, _) in code.match_indices("crate::") {
@@ -67,12 +69,18 @@ fn grouped(group: &str) -> Vec<String> {
 #[test]
 fn a_module_uses_only_modules_above_it() {
     let order = order();
-    assert!(order.len() > 8, "lib.rs lists its modules one a line: {order:?}");
+    assert!(
+        order.len() > 8,
+        "lib.rs lists its modules one a line: {order:?}"
+    );
     let rank = |name: &str| order.iter().position(|module| module == name);
     let mut files = Vec::new();
     sources(Path::new("src"), &mut files);
     let mut wrong = Vec::new();
-    for path in files.iter().filter(|path| !path.ends_with("lib.rs") && !path.ends_with("main.rs")) {
+    for path in files
+        .iter()
+        .filter(|path| !path.ends_with("lib.rs") && !path.ends_with("main.rs"))
+    {
         let own = rank(&module_of(path)).unwrap_or_else(|| panic!("{path:?} is in no module"));
         for name in used(&fs::read_to_string(path).expect("a source")) {
             if rank(&name).is_none_or(|other| other > own) {
@@ -80,11 +88,15 @@ fn a_module_uses_only_modules_above_it() {
             }
         }
     }
-    assert!(wrong.is_empty(), "these look down or past the list: {wrong:#?}");
+    assert!(
+        wrong.is_empty(),
+        "these look down or past the list: {wrong:#?}"
+    );
 }
 
 #[test]
 fn the_check_sees_grouped_and_nested_imports() {
-    let source = "use crate::{belt::{Part, View}, page};\nlet x = crate::cli::run(); // crate::nothing";
+    let source =
+        "use crate::{belt::{Part, View}, page};\nlet x = crate::cli::run(); // crate::nothing";
     assert_eq!(used(source), ["belt", "page", "cli"]);
 }

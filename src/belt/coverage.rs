@@ -2,8 +2,7 @@
 
 use std::collections::VecDeque;
 
-/// Unseen belt whose end is not known yet (no frame has come since) is decided in steps of this length.
-pub const STEP_MM: f64 = 1.0;
+use crate::settings::UNSEEN_STEP_MM as STEP_MM;
 
 /// A stretch of belt.
 #[derive(Clone, Copy, Debug, PartialEq)]

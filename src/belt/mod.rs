@@ -5,7 +5,7 @@ mod motion;
 mod parts;
 mod view;
 
-pub use coverage::{Coverage, STEP_MM, Stretch};
+pub use coverage::{Coverage, Stretch};
 pub use motion::Motion;
 pub use parts::{Gate, Part, Parts};
 pub use view::{Cut, Extent, View};

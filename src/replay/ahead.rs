@@ -44,7 +44,10 @@ impl<E: Send> Ahead<E> {
             scope.spawn(move || work(inspector, mine, read, &send, &spare));
             Lane { looks, used }
         };
-        Self { lanes: inspectors.into_iter().enumerate().map(lane).collect(), next: 0 }
+        Self {
+            lanes: inspectors.into_iter().enumerate().map(lane).collect(),
+            next: 0,
+        }
     }
 }
 

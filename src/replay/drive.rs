@@ -54,7 +54,12 @@ impl Pace {
     /// `real_time` keeps the recording's time, beginning at the first frame. `stop` ends the replay early.
     pub fn new(real_time: bool, latency_us: Micros, stop: &'static AtomicBool) -> Self {
         let clock = real_time.then(|| Monotonic::reading(Micros::ZERO));
-        Self { clock, latency_us, stop, late_frames: 0 }
+        Self {
+            clock,
+            latency_us,
+            stop,
+            late_frames: 0,
+        }
     }
 
     fn start(&mut self, first_us: Micros) {

@@ -11,5 +11,5 @@ pub use ahead::Ahead;
 pub use drive::{Looks, OneByOne, Pace, drive};
 pub use outcome::{Outcome, Row, parts_csv, rows};
 pub use pictures::{Sketch, draw_part};
-pub use summary::{Summary, WorstMargin, summarize};
 pub use score::{Match, Score, score};
+pub use summary::{Summary, WorstMargin, summarize};

@@ -75,8 +75,14 @@ pub struct Row {
 
 /// The rows of `parts.csv` in the order of the decisions.
 pub fn rows(outcome: &Outcome, shapes: &[String], scale: Scale, unseen: Verdict) -> Vec<Row> {
-    let parts = outcome.parts.iter().map(|(part, _)| part_row(part, shapes, scale));
-    let stretches = outcome.unseen.iter().map(|(stretch, at)| unseen_row(*stretch, *at, unseen));
+    let parts = outcome
+        .parts
+        .iter()
+        .map(|(part, _)| part_row(part, shapes, scale));
+    let stretches = outcome
+        .unseen
+        .iter()
+        .map(|(stretch, at)| unseen_row(*stretch, *at, unseen));
     let mut rows: Vec<Row> = parts.chain(stretches).collect();
     rows.sort_by_key(|row| (row.decided_us, row.part.is_none(), row.part));
     rows
@@ -124,7 +130,11 @@ fn unseen_row(stretch: Stretch, at: Micros, verdict: Verdict) -> Row {
 /// Hundredths of a millimetre; nothing finer is measured here. Zero has no sign.
 fn two_places(mm: f64) -> String {
     let text = format!("{mm:.2}");
-    if text == "-0.00" { "0.00".to_owned() } else { text }
+    if text == "-0.00" {
+        "0.00".to_owned()
+    } else {
+        text
+    }
 }
 
 /// The rows as CSV with a header.
@@ -139,10 +149,23 @@ pub fn parts_csv(rows: &[Row]) -> Result<Vec<u8>, csv::Error> {
     if rows.is_empty() {
         csv.write_record(HEADER)?;
     }
-    csv.into_inner().map_err(|error| csv::Error::from(error.into_error()))
+    csv.into_inner()
+        .map_err(|error| csv::Error::from(error.into_error()))
 }
 
 const HEADER: [&str; 14] = [
-    "part", "along_mm", "across_mm", "first_us", "decided_us", "views", "shape", "angle_deg",
-    "flipped", "missing_mm", "excess_mm", "area_mm2", "verdict", "reasons",
+    "part",
+    "along_mm",
+    "across_mm",
+    "first_us",
+    "decided_us",
+    "views",
+    "shape",
+    "angle_deg",
+    "flipped",
+    "missing_mm",
+    "excess_mm",
+    "area_mm2",
+    "verdict",
+    "reasons",
 ];

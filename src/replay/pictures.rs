@@ -49,7 +49,9 @@ impl DrawTarget for Canvas {
         I: IntoIterator<Item = Pixel<Self::Color>>,
     {
         for Pixel(at, colour) in pixels {
-            let (Ok(x), Ok(y)) = (u32::try_from(at.x), u32::try_from(at.y)) else { continue };
+            let (Ok(x), Ok(y)) = (u32::try_from(at.x), u32::try_from(at.y)) else {
+                continue;
+            };
             if let Some(pixel) = self.0.get_pixel_mut_checked(x, y) {
                 *pixel = Rgb([colour.r(), colour.g(), colour.b()]);
             }
@@ -95,7 +97,14 @@ pub fn draw_part(sketch: &Sketch<'_>) -> RgbImage {
     canvas.0
 }
 
-fn enlarge(sheet: &mut RgbImage, picture: Gray<'_>, left: usize, top: usize, width: usize, height: usize) {
+fn enlarge(
+    sheet: &mut RgbImage,
+    picture: Gray<'_>,
+    left: usize,
+    top: usize,
+    width: usize,
+    height: usize,
+) {
     for y in 0..height {
         let row = picture.row(top + y / ZOOM);
         for x in 0..width {
@@ -129,7 +138,11 @@ impl Placed<'_> {
 }
 
 fn draw_marks(canvas: &mut Canvas, marks: &Marks, left: usize, top: usize) {
-    let placed = Placed { marks, left: left as i64, top: top as i64 };
+    let placed = Placed {
+        marks,
+        left: left as i64,
+        top: top as i64,
+    };
     hatch(canvas, &placed, &marks.missing, MISSING, 1);
     hatch(canvas, &placed, &marks.excess, EXCESS, -1);
     outline(canvas, &placed);
@@ -178,7 +191,9 @@ fn outline(canvas: &mut Canvas, placed: &Placed<'_>) {
 fn ring(canvas: &mut Canvas, at: Point, colour: Rgb888) {
     for (diameter, colour, width) in [(24, INK, 5), (24, colour, 3)] {
         let style = PrimitiveStyle::with_stroke(colour, width);
-        let Ok(()) = Circle::with_center(at, diameter).into_styled(style).draw(canvas);
+        let Ok(()) = Circle::with_center(at, diameter)
+            .into_styled(style)
+            .draw(canvas);
     }
 }
 
@@ -190,10 +205,16 @@ fn write_words(canvas: &mut Canvas, sketch: &Sketch<'_>, width: usize, height: u
         let Ok(_) = text.draw(canvas);
         y += LINE_PX as i32;
     }
-    let bar_mm = if sketch.scale.px(10.0) * ZOOM as f64 <= width as f64 * 0.8 { 10.0 } else { 1.0 };
+    let bar_mm = if sketch.scale.px(10.0) * ZOOM as f64 <= width as f64 * 0.8 {
+        10.0
+    } else {
+        1.0
+    };
     let bar_px = (sketch.scale.px(bar_mm) * ZOOM as f64).round() as i32;
     let (from, to) = (Point::new(8, y + 9), Point::new(8 + bar_px, y + 9));
-    let Ok(()) = Line::new(from, to).into_styled(PrimitiveStyle::with_stroke(INK, 3)).draw(canvas);
+    let Ok(()) = Line::new(from, to)
+        .into_styled(PrimitiveStyle::with_stroke(INK, 3))
+        .draw(canvas);
     let label = format!("{bar_mm} mm");
     let text = Text::with_baseline(&label, to + Point::new(8, -8), style, Baseline::Top);
     let Ok(_) = text.draw(canvas);
@@ -203,12 +224,20 @@ fn write_words(canvas: &mut Canvas, sketch: &Sketch<'_>, width: usize, height: u
 /// What the marks mean, each beside a patch of itself.
 fn legend(canvas: &mut Canvas, y: i32) {
     let style = MonoTextStyle::new(&FONT_9X15, INK);
-    let entries = [("taught", OUTLINE, 0), ("missing", MISSING, 1), ("excess", EXCESS, -1)];
+    let entries = [
+        ("taught", OUTLINE, 0),
+        ("missing", MISSING, 1),
+        ("excess", EXCESS, -1),
+    ];
     let mut x = 8;
     for (word, colour, slant) in entries {
         for step in 0..16 * 12 {
             let (dx, dy) = (step % 16, step / 16);
-            let on = if slant == 0 { dy == 6 } else { (dx + slant * dy).rem_euclid(5) < 2 };
+            let on = if slant == 0 {
+                dy == 6
+            } else {
+                (dx + slant * dy).rem_euclid(5) < 2
+            };
             if on {
                 let Ok(()) = Pixel(Point::new(x + dx, y + dy), colour).draw(canvas);
             }

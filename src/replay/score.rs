@@ -31,7 +31,12 @@ pub struct Score {
 impl Score {
     /// Whether every label agrees with its part and no part is without one.
     pub fn agrees(&self) -> bool {
-        let wrong = [&self.misses, &self.false_rejects, &self.not_found, &self.unlabelled];
+        let wrong = [
+            &self.misses,
+            &self.false_rejects,
+            &self.not_found,
+            &self.unlabelled,
+        ];
         wrong.iter().all(|list| list.is_empty())
     }
 }
@@ -44,7 +49,10 @@ pub fn score(labels: &[Label], parts: &[Part], gate_mm: f64) -> Score {
     let (of_label, labelled) = pair_up(labels, parts, gate_mm);
     let mut score = Score::default();
     for (l, label) in labels.iter().enumerate() {
-        let found = Match { label: Some(l), part: of_label[l] };
+        let found = Match {
+            label: Some(l),
+            part: of_label[l],
+        };
         score.matches.push(found);
         match (label.verdict, of_label[l].map(|p| parts[p].verdict)) {
             (Verdict::Reject, Some(Verdict::Keep) | None) => score.misses.push(found),
@@ -54,19 +62,24 @@ pub fn score(labels: &[Label], parts: &[Part], gate_mm: f64) -> Score {
         }
     }
     for p in (0..parts.len()).filter(|&p| !labelled[p]) {
-        let alone = Match { label: None, part: Some(p) };
+        let alone = Match {
+            label: None,
+            part: Some(p),
+        };
         score.matches.push(alone);
         score.unlabelled.push(alone);
     }
-    score.matches.sort_by(|a, b| {
-        along_mm(a, labels, parts).total_cmp(&along_mm(b, labels, parts))
-    });
+    score
+        .matches
+        .sort_by(|a, b| along_mm(a, labels, parts).total_cmp(&along_mm(b, labels, parts)));
     score
 }
 
 fn along_mm(found: &Match, labels: &[Label], parts: &[Part]) -> f64 {
     let label = found.label.map(|l| labels[l].along_mm);
-    label.or(found.part.map(|p| parts[p].along_mm)).unwrap_or(f64::INFINITY)
+    label
+        .or(found.part.map(|p| parts[p].along_mm))
+        .unwrap_or(f64::INFINITY)
 }
 
 fn pair_up(labels: &[Label], parts: &[Part], gate_mm: f64) -> (Vec<Option<usize>>, Vec<bool>) {
@@ -104,7 +117,10 @@ fn candidates(labels: &[Label], parts: &[Part], gate_mm: f64) -> Vec<(f64, usize
                 break;
             }
             if part.extent.distance_mm(label.along_mm, label.across_mm) <= gate_mm {
-                let (along, across) = (label.along_mm - part.along_mm, label.across_mm - part.across_mm);
+                let (along, across) = (
+                    label.along_mm - part.along_mm,
+                    label.across_mm - part.across_mm,
+                );
                 pairs.push((along.hypot(across), l, p));
             }
         }

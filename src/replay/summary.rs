@@ -52,14 +52,22 @@ pub struct Summary {
 pub fn summarize(outcome: &Outcome, settings: &Settings, overdue_frames: u64) -> Summary {
     let parts = || outcome.parts.iter().map(|(part, _)| part);
     let with = |verdict: Verdict| parts().filter(move |part| part.verdict == verdict);
-    let count = |reason: Reason| with(Verdict::Reject).filter(|part| part.reasons.has(reason)).count();
+    let count = |reason: Reason| {
+        with(Verdict::Reject)
+            .filter(|part| part.reasons.has(reason))
+            .count()
+    };
     let good_to = |index: usize| {
         let goes = |(part, outlet): &&(Part, Option<usize>)| {
             part.verdict == Verdict::Keep && *outlet == Some(index)
         };
         outcome.parts.iter().filter(goes).count()
     };
-    let sorted = settings.outlets.iter().enumerate().map(|(k, outlet)| (outlet.name.clone(), good_to(k)));
+    let sorted = settings
+        .outlets
+        .iter()
+        .enumerate()
+        .map(|(k, outlet)| (outlet.name.clone(), good_to(k)));
     Summary {
         frames: outcome.frames,
         parts: outcome.parts.len(),
@@ -71,12 +79,16 @@ pub fn summarize(outcome: &Outcome, settings: &Settings, overdue_frames: u64) ->
             .filter(|(_, count)| *count > 0)
             .collect(),
         sorted: sorted.filter(|(_, count)| *count > 0).collect(),
-        unseen_mm: outcome.unseen.iter().map(|(stretch, _)| stretch.to_mm - stretch.from_mm).sum(),
+        unseen_mm: outcome
+            .unseen
+            .iter()
+            .map(|(stretch, _)| stretch.to_mm - stretch.from_mm)
+            .sum(),
         overdue_frames,
         specks: outcome.specks,
-        worst_margin: with(Verdict::Keep).filter_map(|part| margin(part, settings)).min_by(|a, b| {
-            (a.limit_mm - a.value_mm).total_cmp(&(b.limit_mm - b.value_mm))
-        }),
+        worst_margin: with(Verdict::Keep)
+            .filter_map(|part| margin(part, settings))
+            .min_by(|a, b| (a.limit_mm - a.value_mm).total_cmp(&(b.limit_mm - b.value_mm))),
     }
 }
 
@@ -105,8 +117,17 @@ impl Summary {
             let _ = writeln!(text, "  {name:<15} {what}");
         };
         line("parts", format!("{} in {} frames", self.parts, self.frames));
-        line("kept", counted(self.kept, self.sorted.iter().map(|(name, n)| (name.as_str(), *n))));
-        line("rejected", counted(self.rejected, self.reasons.iter().copied()));
+        line(
+            "kept",
+            counted(
+                self.kept,
+                self.sorted.iter().map(|(name, n)| (name.as_str(), *n)),
+            ),
+        );
+        line(
+            "rejected",
+            counted(self.rejected, self.reasons.iter().copied()),
+        );
         line("unseen belt", unseen(self.unseen_mm, outcome));
         line("overdue frames", self.overdue_frames.to_string());
         if self.specks > 0 {
@@ -116,7 +137,10 @@ impl Summary {
             line("worst margin", worst.to_string());
         }
         if let Some((cause, at)) = outcome.stopped {
-            line("stopped", format!("{cause} (at {:.3} s); every outlet is off", at.as_seconds()));
+            line(
+                "stopped",
+                format!("{cause} (at {:.3} s); every outlet is off", at.as_seconds()),
+            );
         }
         text
     }
@@ -124,9 +148,17 @@ impl Summary {
 
 impl std::fmt::Display for WorstMargin {
     fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
-        let Self { part, figure, value_mm, limit_mm } = self;
+        let Self {
+            part,
+            figure,
+            value_mm,
+            limit_mm,
+        } = self;
         let left = limit_mm - value_mm;
-        write!(f, "{left:.2} mm: part {part}, {figure} {value_mm:.2} of {limit_mm:.2} mm")
+        write!(
+            f,
+            "{left:.2} mm: part {part}, {figure} {value_mm:.2} of {limit_mm:.2} mm"
+        )
     }
 }
 
@@ -134,10 +166,16 @@ impl std::fmt::Display for Cause {
     fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
         match self {
             Self::Partial { along_mm } => {
-                write!(f, "a part at {along_mm:.1} mm was never seen whole, and judge.partial says stop")
+                write!(
+                    f,
+                    "a part at {along_mm:.1} mm was never seen whole, and judge.partial says stop"
+                )
             }
             Self::Unseen { along_mm } => {
-                write!(f, "belt from {along_mm:.1} mm on passed unseen, and belt.unseen says stop")
+                write!(
+                    f,
+                    "belt from {along_mm:.1} mm on passed unseen, and belt.unseen says stop"
+                )
             }
         }
     }
@@ -146,7 +184,11 @@ impl std::fmt::Display for Cause {
 /// `12 (missing 4, excess 3)`.
 fn counted<'a>(total: usize, of: impl Iterator<Item = (&'a str, usize)>) -> String {
     let of: Vec<_> = of.map(|(name, count)| format!("{name} {count}")).collect();
-    if of.is_empty() { total.to_string() } else { format!("{total} ({})", of.join(", ")) }
+    if of.is_empty() {
+        total.to_string()
+    } else {
+        format!("{total} ({})", of.join(", "))
+    }
 }
 
 fn unseen(total_mm: f64, outcome: &Outcome) -> String {

@@ -21,7 +21,7 @@ mod schema;
 mod source;
 mod walk;
 
-pub use derived::{Reach, SWITCH_BYTES};
+pub use derived::{Geometry, Reach, SWITCH_BYTES, UNSEEN_STEP_MM};
 pub use fields::*;
 pub use load::{Loaded, load, parse};
 pub use part::PartSize;
