@@ -21,6 +21,9 @@ mod schema;
 mod source;
 mod walk;
 
+#[cfg(test)]
+mod tests;
+
 pub use derived::{Reach, SWITCH_BYTES};
 pub use fields::*;
 pub use load::{Loaded, load, parse};
