@@ -3,9 +3,9 @@
 
 use crate::belt::{Cut, Extent, Stretch, View};
 use crate::frames::Frame;
-use crate::settings::{Geometry, Travel};
-use crate::shape::{Judge, Judged};
-use crate::stage::{Region, Stage};
+use crate::settings::{self, FaceDown, Geometry, Settings, Travel};
+use crate::shape::{Common, Judge, Judged, Limits, Silhouette};
+use crate::stage::{self, Level, Region, Stage};
 use crate::units::Micros;
 
 /// The belt that the region of interest shows when the belt reads 0; other readings move it along.
@@ -88,6 +88,32 @@ impl Look {
             cut: spot.cut,
             judged: spot.judged,
         })
+    }
+}
+
+/// What holds for all shapes, in pixels.
+pub fn common(settings: &Settings) -> Common {
+    Common {
+        flaw_below_px: settings.flaw_below_px(),
+        fit_at_least: settings.judge.fit_at_least,
+    }
+}
+
+/// One shape's limits, in pixels.
+pub fn limits(settings: &Settings, shape: &settings::Shape) -> Limits {
+    let scale = settings.scale();
+    let lengths = |mm: Option<[f64; 2]>| mm.map(|ends| ends.map(|mm| scale.px(mm)));
+    Limits {
+        missing_px: scale.px(shape.missing_mm),
+        excess_px: scale.px(shape.excess_mm),
+        reject_flipped: shape.face_down == FaceDown::Reject,
+        area_px: shape.area_mm2.map(|ends| ends.map(|mm2| scale.px2(mm2))),
+        length_px: lengths(shape.length_mm),
+        width_px: lengths(shape.width_mm),
+        holes: shape.holes,
+        boundary_px: lengths(shape.boundary_mm),
+        branches: shape.branches,
+        branch_above_px: scale.px(shape.branch_above_mm.unwrap_or(0.0)),
     }
 }
 

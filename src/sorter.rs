@@ -302,3 +302,103 @@ impl Sorter {
         Event::Stopped(cause, self.latest_us)
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::reject::OutletTiming;
+
+    const SPEED_MM_S: f64 = 400.0;
+    const DECISION_MM: f64 = 200.0;
+
+    fn sorter(unseen: Policy) -> Sorter {
+        let plan = Plan {
+            speed_mm_s: SPEED_MM_S,
+            gate: Gate { base_mm: 0.75, drift_mm_s: 8.0 },
+            seen_at_zero: Stretch { from_mm: -160.0, to_mm: 0.0 },
+            decision_mm: DECISION_MM,
+            reject_outlet: 0,
+            shape_outlets: vec![None],
+            partial: Policy::Reject,
+            unseen,
+        };
+        let outlet = OutletTiming {
+            distance_mm: 300.0,
+            margin_mm: 5.0,
+            open_lead_us: Micros::from_ms(20.0),
+            close_lead_us: Micros::from_ms(30.0),
+            min_on_us: Micros(1),
+            min_off_us: Micros(1),
+            max_on_us: Micros::from_seconds(10.0),
+        };
+        Sorter::new(plan, Planner::new(vec![outlet]).unwrap())
+    }
+
+    fn empty(captured_ms: f64) -> Look {
+        Look { captured_us: Micros::from_ms(captured_ms), ..Look::default() }
+    }
+
+    /// Frames at these times, each taking effect 50 ms later, then whatever is left.
+    fn events(sorter: &mut Sorter, captured_ms: &[f64], poll_every_ms: Option<f64>) -> Vec<Event> {
+        let mut events = Vec::new();
+        let mut now = Micros::ZERO;
+        for &ms in captured_ms {
+            let due = Micros::from_ms(ms + 50.0);
+            while let Some(step) = poll_every_ms.map(Micros::from_ms).filter(|&step| now + step < due) {
+                now += step;
+                events.extend(std::iter::from_fn(|| sorter.poll(now)));
+            }
+            events.extend(std::iter::from_fn(|| sorter.poll(due)));
+            sorter.take(&empty(ms));
+        }
+        sorter.end_of_belt();
+        while let Some(due) = sorter.next_due() {
+            events.extend(std::iter::from_fn(|| sorter.poll(due)));
+        }
+        events
+    }
+
+    /// At 400 mm/s a frame each 300 ms moves the belt 120 mm, so 160 mm of view leave nothing out; a missing frame
+    /// leaves 80 mm.
+    #[test]
+    fn a_missing_frame_leaves_the_belt_that_it_alone_covered() {
+        let mut sorter = sorter(Policy::Reject);
+        let events = events(&mut sorter, &[0.0, 300.0, 900.0, 1200.0], None);
+        assert!((sorter.health().unseen_mm - 80.0).abs() < 1e-9);
+        let switches: Vec<_> = events
+            .iter()
+            .filter_map(|event| match event {
+                Event::Switch(switch) => Some(switch.due_us),
+                _ => None,
+            })
+            .collect();
+        // Unseen is 120 to 200 mm; open from 120 + 300 - 5 = 415 mm (1037.5 ms) less 20 ms, to 505 mm less 30 ms.
+        assert_eq!(switches, [Micros::from_ms(1017.5), Micros::from_ms(1232.5)]);
+    }
+
+    #[test]
+    fn what_happens_does_not_depend_on_how_often_it_is_asked_for() {
+        let frames = [0.0, 300.0, 1500.0, 1800.0];
+        let rarely = events(&mut sorter(Policy::Reject), &frames, None);
+        let often = events(&mut sorter(Policy::Reject), &frames, Some(0.25));
+        assert!(rarely.len() > 100);
+        assert_eq!(rarely, often);
+    }
+
+    #[test]
+    fn kept_unseen_belt_is_counted_and_switches_nothing() {
+        let mut sorter = sorter(Policy::Keep);
+        let events = events(&mut sorter, &[0.0, 300.0, 900.0], None);
+        assert!(events.iter().all(|event| matches!(event, Event::Unseen(..))));
+        assert!(sorter.health().unseen_mm > 79.0);
+    }
+
+    #[test]
+    fn stop_ends_with_everything_off_and_nothing_after() {
+        let mut sorter = sorter(Policy::Stop);
+        let events = events(&mut sorter, &[0.0, 300.0, 1500.0, 1800.0], None);
+        assert!(matches!(events.last(), Some(Event::Stopped(Cause::Unseen { .. }, _))), "{events:?}");
+        assert_eq!(sorter.next_due(), None);
+        assert_eq!(sorter.poll(Micros::MAX), None);
+    }
+}

@@ -2,7 +2,7 @@
 
 use std::collections::VecDeque;
 
-use crate::settings::UNSEEN_STEP_MM as STEP_MM;
+use crate::settings::DECISION_STEP_MM;
 
 /// A stretch of belt.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -43,26 +43,24 @@ impl Coverage {
         self.settled_mm = Some(settled_mm.max(seen.to_mm));
     }
 
-    /// Where the next stretch of unseen belt ends that could be taken: the decision falls when that point is reached.
+    /// Where the next piece of unseen belt begins, if nothing comes to cover it before it is decided.
     pub fn next_mm(&self) -> Option<f64> {
-        match self.gaps.front() {
-            Some(gap) => Some(gap.to_mm.min(gap.from_mm + STEP_MM)),
-            None if self.ended => None,
-            None => self.settled_mm.map(|settled_mm| settled_mm + STEP_MM),
-        }
+        let gap = self.gaps.front().map(|gap| gap.from_mm);
+        gap.or(self.settled_mm.filter(|_| !self.ended))
     }
 
-    /// Takes the stretch whose end [`Coverage::next_mm`] told.
+    /// Takes the piece that [`Coverage::next_mm`] told of, at most [`DECISION_STEP_MM`] long.
     pub fn take_unseen(&mut self) -> Option<Stretch> {
-        let to_mm = self.next_mm()?;
-        if let Some(gap) = self.gaps.front_mut() {
-            let from_mm = std::mem::replace(&mut gap.from_mm, to_mm);
-            if gap.from_mm >= gap.to_mm {
+        let from_mm = self.next_mm()?;
+        let mut to_mm = from_mm + DECISION_STEP_MM;
+        match self.gaps.front_mut() {
+            Some(gap) if gap.to_mm <= to_mm => {
+                to_mm = gap.to_mm;
                 self.gaps.pop_front();
             }
-            return Some(Stretch { from_mm, to_mm });
+            Some(gap) => gap.from_mm = to_mm,
+            None => self.settled_mm = Some(to_mm),
         }
-        let from_mm = self.settled_mm.replace(to_mm)?;
         Some(Stretch { from_mm, to_mm })
     }
 
@@ -80,9 +78,10 @@ mod tests {
         Stretch { from_mm, to_mm }
     }
 
-    fn drain(coverage: &mut Coverage, decided_mm: f64) -> Vec<Stretch> {
+    /// All that is unseen when every frame that shows belt up to `known_mm` has come.
+    fn drain(coverage: &mut Coverage, known_mm: f64) -> Vec<Stretch> {
         let mut joined: Vec<Stretch> = Vec::new();
-        while coverage.next_mm().is_some_and(|to_mm| to_mm <= decided_mm) {
+        while coverage.next_mm().is_some_and(|from_mm| from_mm + DECISION_STEP_MM <= known_mm) {
             let piece = coverage.take_unseen().unwrap();
             match joined.last_mut() {
                 Some(last) if last.to_mm == piece.from_mm => last.to_mm = piece.to_mm,
@@ -107,7 +106,7 @@ mod tests {
         coverage.cover(stretch(0.0, 160.0));
         coverage.cover(stretch(300.25, 460.25));
         assert_eq!(drain(&mut coverage, 159.0), []);
-        assert_eq!(drain(&mut coverage, 460.0), [stretch(160.0, 300.25)]);
+        assert_eq!(drain(&mut coverage, 460.25), [stretch(160.0, 300.25)]);
     }
 
     #[test]
@@ -116,6 +115,6 @@ mod tests {
         coverage.begin(100.0);
         assert_eq!(drain(&mut coverage, 104.5), [stretch(100.0, 104.0)]);
         coverage.cover(stretch(104.75, 200.0));
-        assert_eq!(drain(&mut coverage, 200.0), [stretch(104.0, 104.75)]);
+        assert_eq!(drain(&mut coverage, 200.5), [stretch(104.0, 104.75)]);
     }
 }

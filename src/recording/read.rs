@@ -54,6 +54,28 @@ impl Recording {
         (at(self.entries.first()), at(self.entries.last()))
     }
 
+    /// Decodes frame `k`, counted from 0, reusing the buffer of `frame`.
+    ///
+    /// # Errors
+    /// The picture cannot be read; the contents of `frame` are unspecified then.
+    ///
+    /// # Panics
+    /// If there is no such frame.
+    pub fn read_into(&self, k: usize, frame: &mut Frame) -> Result<(), RecordingError> {
+        let entry = &self.entries[k];
+        picture::read(&self.folder.join(&entry.file), self.size, &mut frame.pixels)?;
+        frame.width_px = self.size.width_px;
+        frame.height_px = self.size.height_px;
+        frame.captured_us = entry.captured_us;
+        frame.belt_mm = entry.belt_mm;
+        Ok(())
+    }
+
+    /// The frame that was captured at that moment.
+    pub fn frame_at(&self, captured_us: Micros) -> Option<usize> {
+        self.entries.binary_search_by_key(&captured_us, |entry| entry.captured_us).ok()
+    }
+
     /// The frames from the first to the last. Any number of playbacks may run at once.
     pub fn play(&self) -> Playback<'_> {
         Playback {
@@ -108,16 +130,10 @@ impl FrameSource for Playback<'_> {
     type Error = RecordingError;
 
     fn next_into(&mut self, frame: &mut Frame) -> Result<bool, RecordingError> {
-        let Some(entry) = self.recording.entries.get(self.next) else {
+        if self.next == self.recording.len() {
             return Ok(false);
-        };
-        let size = self.recording.size;
-        let file = self.recording.folder.join(&entry.file);
-        picture::read(&file, size, &mut frame.pixels)?;
-        frame.width_px = size.width_px;
-        frame.height_px = size.height_px;
-        frame.captured_us = entry.captured_us;
-        frame.belt_mm = entry.belt_mm;
+        }
+        self.recording.read_into(self.next, frame)?;
         self.next += 1;
         Ok(true)
     }

@@ -3,6 +3,7 @@
 use serde::Serialize;
 
 use crate::belt::{Part, Stretch};
+use crate::reject::Loss;
 use crate::shape::{Reason, Verdict};
 use crate::sorter::{Cause, Event};
 use crate::units::{Micros, Scale};
@@ -14,6 +15,8 @@ pub struct Outcome {
     pub parts: Vec<(Part, Option<usize>)>,
     /// Unseen belt with the moment at which its last piece was decided; stretches that touch are one.
     pub unseen: Vec<(Stretch, Micros)>,
+    /// Belt that should have gone to an outlet and did not.
+    pub losses: Vec<Loss>,
     /// Why and when the sorter stopped by itself.
     pub stopped: Option<(Cause, Micros)>,
     /// Frames whose verdicts took effect.
@@ -35,6 +38,7 @@ impl Outcome {
                 _ => self.unseen.push((*piece, *at)),
             },
             Event::Switch(_) => {}
+            Event::Lost(loss) => self.losses.push(*loss),
             Event::Stopped(cause, at) => self.stopped = Some((*cause, *at)),
         }
     }

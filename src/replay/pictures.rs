@@ -13,7 +13,7 @@ use embedded_graphics::text::{Baseline, Text};
 use image::{Rgb, RgbImage};
 
 use crate::frames::Gray;
-use crate::shape::Marks;
+pub struct Marks { pub left_px: i32, pub top_px: i32, pub width_px: usize, pub height_px: usize, pub taught: Vec<bool>, pub missing: Vec<bool>, pub excess: Vec<bool>, pub missing_at: Option<(i32,i32)>, pub excess_at: Option<(i32,i32)> }
 use crate::units::Scale;
 
 /// Picture pixels for one camera pixel.
@@ -231,7 +231,7 @@ fn legend(canvas: &mut Canvas, y: i32) {
     ];
     let mut x = 8;
     for (word, colour, slant) in entries {
-        for step in 0..16 * 12 {
+        for step in 0..16 * 12_i32 {
             let (dx, dy) = (step % 16, step / 16);
             let on = if slant == 0 {
                 dy == 6

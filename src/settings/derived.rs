@@ -9,14 +9,14 @@
 //! has moved on by
 //!
 //! ```text
-//! decision_mm = view_mm + speed_mm_s * (1 + tolerance) * latency_s
+//! decision_mm = view_mm + speed_mm_s * (1 + tolerance) * latency_s + DECISION_STEP_MM
 //! ```
 //!
-//! everything that can be known about the piece is known and it is decided. An outlet can be reached when the signal
+//! everything that can be known about the piece and the step of belt behind it is known, and it is decided. An outlet can be reached when the signal
 //! to open it need not leave before that:
 //!
 //! ```text
-//! distance_mm - margin_mm - speed_mm_s * (1 + tolerance) * open_lead_s >= decision_mm + UNSEEN_STEP_MM
+//! distance_mm - margin_mm - speed_mm_s * (1 + tolerance) * open_lead_s >= decision_mm
 //! ```
 //!
 //! # The serial line
@@ -38,8 +38,8 @@ const FIXED_SILENCE_ABOVE_BAUD: u32 = 19_200;
 /// Bytes of the message that switches one coil, and of its answer.
 pub const SWITCH_BYTES: usize = 8;
 
-/// Belt that no frame shows is decided in steps of this length, when the end of the step reaches the point of decision.
-pub const UNSEEN_STEP_MM: f64 = 1.0;
+/// Belt that no frame shows is decided in steps of this length, so that a step's trailing end is past every frame too.
+pub const DECISION_STEP_MM: f64 = 1.0;
 
 /// Keeps a size that is exact on paper from slipping a pixel through rounding.
 const ROUNDING: f64 = 1e-6;
@@ -210,7 +210,7 @@ impl Settings {
 
     /// How far past the upstream edge a piece of belt is decided; see the top of this file.
     pub fn decision_mm(&self) -> f64 {
-        self.view_mm() + self.fastest_mm_in(self.latency_us())
+        self.view_mm() + self.fastest_mm_in(self.latency_us()) + DECISION_STEP_MM
     }
 
     /// In how many frames a part of this length along the belt lies whole in view, on average: it is the whole number
@@ -240,7 +240,7 @@ impl Settings {
     /// Whether the signal to open can leave after the point of decision, and how much there is to spare.
     pub fn reach(&self, outlet: &Outlet) -> Reach {
         let lead_mm = self.fastest_mm_in(self.open_lead_us(outlet));
-        let needed_mm = self.decision_mm() + UNSEEN_STEP_MM + outlet.margin_mm + lead_mm;
+        let needed_mm = self.decision_mm() + outlet.margin_mm + lead_mm;
         let slack_mm = outlet.distance_mm - needed_mm;
         Reach {
             needed_mm,
@@ -299,5 +299,211 @@ impl Line {
 
     fn characters(&self, count: f64) -> Micros {
         Micros((count * self.character_us() - ROUNDING).ceil() as i64)
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use std::path::Path;
+
+    use proptest::prelude::*;
+
+    use super::*;
+    use crate::settings::{ElementKind, RegionMm, parse};
+
+    fn stars() -> Settings {
+        let text = include_str!("../../config/oat-stars.toml");
+        let loaded = parse(Path::new("oat-stars.toml"), text);
+        loaded.unwrap_or_else(|error| panic!("{error}")).settings
+    }
+
+    /// MODBUS over Serial Line V1.02: 11-bit characters (2.5.1), t1.5 and t3.5 fixed above 19200 baud (2.5.1.1).
+    /// Milliseconds: character, t1.5, t3.5, 8 bytes, 8 bytes with t3.5.
+    #[test]
+    fn serial_line_times_are_the_standards() {
+        let table = [
+            (
+                1_200,
+                [9.166_667, 13.75, 32.083_333, 73.333_333, 105.416_667],
+            ),
+            (
+                2_400,
+                [4.583_333, 6.875, 16.041_667, 36.666_667, 52.708_333],
+            ),
+            (
+                4_800,
+                [2.291_667, 3.437_5, 8.020_833, 18.333_333, 26.354_167],
+            ),
+            (
+                9_600,
+                [1.145_833, 1.718_75, 4.010_417, 9.166_667, 13.177_083],
+            ),
+            (
+                19_200,
+                [0.572_917, 0.859_375, 2.005_208, 4.583_333, 6.588_542],
+            ),
+            (38_400, [0.286_458, 0.75, 1.75, 2.291_667, 4.041_667]),
+            (57_600, [0.190_972, 0.75, 1.75, 1.527_778, 3.277_778]),
+            (115_200, [0.095_486, 0.75, 1.75, 0.763_889, 2.513_889]),
+        ];
+        for (baud, [character, t1_5, t3_5, message, switch]) in table {
+            let line = Line {
+                baud,
+                ..stars().line
+            };
+            assert!(
+                (line.character_us() / 1e3 - character).abs() < 1e-6,
+                "{baud}"
+            );
+            let times = [
+                (line.t1_5_us(), t1_5),
+                (line.t3_5_us(), t3_5),
+                (line.wire_us(8), message),
+            ];
+            // Whole microseconds, rounded up: the standard's times are least times.
+            for (time, expected_ms) in times {
+                let above_ms = time.as_ms() - expected_ms;
+                assert!(
+                    (-1e-6..1e-3).contains(&above_ms),
+                    "{baud}: {time} for {expected_ms} ms"
+                );
+            }
+            assert!((line.switch_us().as_ms() - switch).abs() < 2e-3, "{baud}");
+        }
+    }
+
+    /// The element is the odd number of pixels nearest to it, found by trying them all.
+    #[test]
+    fn element_is_the_nearest_odd_number_of_pixels() {
+        let mut settings = stars();
+        for tenth_px in 10_u32..2_000 {
+            let px = f64::from(tenth_px) / 10.0;
+            settings.picture.element_mm = px * settings.camera.mm_per_px;
+            let nearest = (1..2_100_usize).step_by(2).min_by(|a, b| {
+                let off = |odd: usize| (odd as f64 - px).abs();
+                off(*a).total_cmp(&off(*b)).then(b.cmp(a))
+            });
+            if tenth_px % 20 != 0 {
+                assert_eq!(Some(settings.element_px()), nearest, "{px}");
+            }
+        }
+        settings.picture.element_mm = 45.0;
+        settings.picture.element = ElementKind::Octagon;
+        assert_eq!(settings.element_px(), 181, "half way between 179 and 181");
+    }
+
+    /// 0.25 mm/px, so 16 px to the mm2; "not larger than" and "smaller than" meet whole pixels on their own sides.
+    #[test]
+    fn areas_keep_their_meaning_in_pixels() {
+        let mut settings = stars();
+        settings.picture.fill_below_mm2 = 2.0;
+        settings.picture.speck_below_mm2 = 2.0;
+        assert_eq!(
+            (settings.fill_below_px(), settings.speck_below_px()),
+            (32, 32)
+        );
+        settings.picture.fill_below_mm2 = 2.03;
+        settings.picture.speck_below_mm2 = 2.03;
+        assert_eq!(
+            (settings.fill_below_px(), settings.speck_below_px()),
+            (32, 33)
+        );
+        settings.picture.speck_below_mm2 = 0.0;
+        assert_eq!(settings.speck_below_px(), 0);
+    }
+
+    #[test]
+    fn region_is_rounded_to_pixels_and_stays_in_the_picture() {
+        let mut settings = stars();
+        settings.picture.region_mm = Some(RegionMm {
+            left: 10.1,
+            top: 5.0,
+            width: 500.0,
+            height: 20.1,
+        });
+        let window = Window {
+            left_px: 40,
+            top_px: 20,
+            width_px: 600,
+            height_px: 80,
+        };
+        assert_eq!(settings.region_px(), window);
+        assert_eq!(settings.view_mm(), 160.0);
+        settings.belt.travel = Travel::Left;
+        assert_eq!(settings.view_mm(), 150.0);
+        assert_eq!(settings.region_length_mm(), 150.0);
+    }
+
+    /// Elementary: 400 mm/s for 0.4 ms, 8 frames/s, 100 ms at 408 mm/s; lead 15 ms + 2.292 ms + 1.75 ms.
+    #[test]
+    fn the_example_amounts_to_what_it_says() {
+        let settings = stars();
+        let near = |left: f64, right: f64| assert!((left - right).abs() < 1e-9, "{left} {right}");
+        near(settings.blur_mm(), 0.16);
+        near(settings.frame_step_mm(), 50.0);
+        near(settings.decision_mm(), 160.0 + 40.8 + 1.0);
+        near(settings.whole_views(38.0), 2.44);
+        let nozzle = &settings.outlets[0];
+        assert_eq!(settings.open_lead_us(nozzle), Micros(19_042));
+        assert_eq!(settings.close_lead_us(nozzle), Micros(24_042));
+        let reach = settings.reach(nozzle);
+        near(reach.needed_mm, 201.8 + 6.0 + 408.0 * 0.019_042);
+        near(reach.slack_mm, 330.0 - reach.needed_mm);
+        near(reach.slack_ms, reach.slack_mm / 0.408);
+        // (38 + 12) mm at 400 mm/s, and 5 ms less because closing takes longer.
+        near(settings.on_ms(nozzle, 38.0), 125.0 - 5.0);
+        assert_eq!(settings.outlet_named("air-nozzle"), Some(0));
+        assert_eq!(settings.outlet_named("flap"), None);
+    }
+
+    #[test]
+    fn along_is_the_reading_at_which_the_upstream_edge_is_crossed() {
+        let mut settings = stars();
+        assert_eq!(1_000.0 - settings.geometry().behind_upstream_mm(0.0), 1_000.0);
+        assert_eq!(1_000.0 - settings.geometry().behind_upstream_mm(640.0), 840.0);
+        settings.belt.travel = Travel::Left;
+        assert_eq!(1_000.0 - settings.geometry().behind_upstream_mm(640.0), 1_000.0);
+        assert_eq!(1_000.0 - settings.geometry().behind_upstream_mm(600.0), 990.0);
+    }
+
+    proptest! {
+        /// The plain meaning of the point of decision: on a belt at its fastest no frame that shows a piece takes
+        /// effect after it, and one that is captured as the piece leaves takes effect just one step before.
+        #[test]
+        fn nothing_that_sees_a_piece_takes_effect_after_its_decision(
+            speed in 10.0..2_000.0_f64,
+            tolerance in 0.0..20.0_f64,
+            frames in 1.0..200.0_f64,
+            latency in 1.0..500.0_f64,
+            left in 0.0..60.0_f64,
+            width in 20.0..90.0_f64,
+            leftwards: bool,
+            piece in 0.0..500.0_f64,
+        ) {
+            let mut settings = stars();
+            settings.belt.speed_mm_s = speed;
+            settings.belt.speed_tolerance_percent = tolerance;
+            settings.camera.frames_per_s = frames;
+            settings.camera.latency_ms = latency;
+            settings.belt.travel = if leftwards { Travel::Left } else { Travel::Right };
+            settings.picture.region_mm = Some(RegionMm { left, top: 0.0, width, height: 100.0 });
+            let window = settings.region_px();
+            let edges = [window.left_px as f64, (window.left_px + window.width_px) as f64];
+            let fastest = settings.fastest_mm_s();
+            let effect_mm = |captured_s: f64| (captured_s + settings.latency_us().as_seconds()) * fastest - piece;
+            let sees = |captured_s: f64| {
+                let [one, other] = edges.map(|x_px| captured_s * fastest - settings.geometry().behind_upstream_mm(x_px));
+                (one.min(other)..=one.max(other)).contains(&piece)
+            };
+            for frame in 0..((piece + 200.0) / fastest * frames).ceil() as u32 {
+                let captured_s = f64::from(frame) / frames;
+                if sees(captured_s) {
+                    prop_assert!(effect_mm(captured_s) + DECISION_STEP_MM <= settings.decision_mm() + 1e-6);
+                }
+            }
+            let leaving_s = (piece + settings.view_mm()) / fastest;
+            prop_assert!(sees(leaving_s - 1e-9) && !sees(leaving_s + 1e-6));
+            prop_assert!((effect_mm(leaving_s) + DECISION_STEP_MM - settings.decision_mm()).abs() < 1e-6);
+        }
     }
 }

@@ -21,7 +21,10 @@ mod schema;
 mod source;
 mod walk;
 
-pub use derived::{Geometry, Reach, SWITCH_BYTES, UNSEEN_STEP_MM};
+#[cfg(test)]
+mod tests;
+
+pub use derived::{DECISION_STEP_MM, Geometry, Reach, SWITCH_BYTES};
 pub use fields::*;
 pub use load::{Loaded, load, parse};
 pub use part::PartSize;

@@ -229,11 +229,10 @@ fn unit(key: &str) -> &'static str {
         ("_percent", "%"),
         ("frames_per_s", "frames/s"),
     ];
-    let name = key
-        .split('[')
-        .next()
-        .filter(|_| key.ends_with(']'))
-        .unwrap_or(key);
+    let name = match key.rsplit_once('[') {
+        Some((list, index)) if index.ends_with(']') => list,
+        _ => key,
+    };
     let known = UNITS.iter().find(|(ending, _)| name.ends_with(ending));
     known.map_or("", |(_, unit)| unit)
 }
@@ -297,7 +296,7 @@ fn within(rule: &Value, low: &str, high: &str, number: f64) -> bool {
 fn nearest<'a>(name: &str, known: impl Iterator<Item = &'a String>) -> Option<&'a str> {
     let distance = |other: &str| strsim::damerau_levenshtein(name, other);
     let near = known.map(|other| (distance(other), other.as_str())).min()?;
-    (near.0 <= near.1.len().div_ceil(3)).then_some(near.1)
+    (near.0 <= (near.1.len() / 3).max(1)).then_some(near.1)
 }
 
 fn join(table: &str, name: &str) -> String {

@@ -1,5 +1,7 @@
 //! What the stage is asked to do, every size in pixels.
 
+use crate::settings::{self, ElementKind, Settings, Tone};
+
 /// What the stage does, every size in pixels.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Plan {
@@ -17,6 +19,35 @@ pub struct Plan {
     pub fill_below_px: u64,
     /// Regions with fewer pixels are specks: counted and dropped.
     pub speck_below_px: u64,
+}
+
+impl Plan {
+    /// What the settings amount to.
+    pub fn of(settings: &Settings) -> Self {
+        let (window, size) = (settings.region_px(), settings.element_px());
+        Self {
+            width_px: window.width_px,
+            height_px: window.height_px,
+            polarity: match settings.picture.parts {
+                Tone::Bright => Polarity::Bright,
+                Tone::Dark => Polarity::Dark,
+            },
+            element: match settings.picture.element {
+                ElementKind::Square => Element::Rectangle {
+                    width_px: size,
+                    height_px: size,
+                },
+                ElementKind::Octagon => Element::Octagon { diameter_px: size },
+            },
+            threshold: match settings.picture.threshold {
+                settings::Threshold::Fixed { level } => Threshold::Fixed { level },
+                settings::Threshold::Otsu { floor } => Threshold::Otsu { floor },
+                settings::Threshold::Hysteresis { low, high } => Threshold::Hysteresis { low, high },
+            },
+            fill_below_px: settings.fill_below_px(),
+            speck_below_px: settings.speck_below_px(),
+        }
+    }
 }
 
 /// Which way parts differ from the belt.

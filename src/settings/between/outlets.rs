@@ -1,5 +1,6 @@
 //! Whether each outlet can be reached in time and takes only what it is meant to take.
 
+use crate::settings::derived::DECISION_STEP_MM;
 use crate::settings::fields::{Outlet, Settings};
 
 use super::{Findings, down, n, up};
@@ -33,12 +34,14 @@ fn reached(settings: &Settings, outlet: &Outlet, key: String, found: &mut Findin
     };
     let lead = settings.open_lead_us(outlet);
     let why = format!(
-        "a part is decided {} mm past the upstream edge ({} mm of view, then up to {} mm during the latency of {} ms), \
+        "a part is decided {} mm past the upstream edge ({} mm of view, up to {} mm during the latency of {} ms, \
+         {} mm because belt is decided in steps), \
          and the signal must leave {} mm of margin and {} mm ({} ms) of lead before the outlet",
         n(settings.decision_mm()),
         n(settings.view_mm()),
         n(settings.fastest_mm_in(settings.latency_us())),
         n(settings.camera.latency_ms),
+        n(DECISION_STEP_MM),
         n(outlet.margin_mm),
         n(settings.fastest_mm_in(lead)),
         n(lead.as_ms()),

@@ -2,7 +2,7 @@
 
 use crate::settings::fields::{RegionMm, Settings, Threshold};
 
-use super::{Findings, n};
+use super::{Findings, down, n};
 
 /// The smallest region of interest, as for the picture itself.
 const SMALLEST_REGION_PX: usize = 16;
@@ -76,8 +76,9 @@ fn element_small(settings: &Settings, found: &mut Findings) {
 fn element_large(settings: &Settings, found: &mut Findings) {
     let (px, region) = (settings.element_px(), settings.region_px());
     if px > region.width_px && px > region.height_px {
-        let longer = region.width_px.max(region.height_px);
-        let expected = format!("at most {} mm", n(settings.scale().mm(longer as f64)));
+        let longer_px = region.width_px.max(region.height_px);
+        let odd_px = longer_px - usize::from(longer_px % 2 == 0);
+        let expected = format!("at most {} mm", down(settings.scale().mm(odd_px as f64)));
         let why = format!(
             "the element ({px} px) is larger than both sides of the region of interest ({} x {} px), so that the \
              top-hat could no longer follow uneven light",
