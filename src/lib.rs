@@ -25,8 +25,14 @@ pub mod shape;
 
 pub mod belt;
 
+pub mod inspect;
+
 pub mod reject;
 
+pub mod sorter;
+
 pub mod recording;
+
+pub mod replay;
 
 pub mod cli;

@@ -16,7 +16,7 @@
 //! to open it need not leave before that:
 //!
 //! ```text
-//! distance_mm - margin_mm - speed_mm_s * (1 + tolerance) * open_lead_s >= decision_mm
+//! distance_mm - margin_mm - speed_mm_s * (1 + tolerance) * open_lead_s >= decision_mm + UNSEEN_STEP_MM
 //! ```
 //!
 //! # The serial line
@@ -37,6 +37,9 @@ const FIXED_SILENCE_ABOVE_BAUD: u32 = 19_200;
 
 /// Bytes of the message that switches one coil, and of its answer.
 pub const SWITCH_BYTES: usize = 8;
+
+/// Belt that no frame shows is decided in steps of this length, when the end of the step reaches the point of decision.
+pub const UNSEEN_STEP_MM: f64 = 1.0;
 
 /// Keeps a size that is exact on paper from slipping a pixel through rounding.
 const ROUNDING: f64 = 1e-6;
@@ -121,16 +124,46 @@ impl Settings {
     }
 }
 
+/// How the region of interest lies on the belt.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Geometry {
+    /// Size of a pixel.
+    pub scale: Scale,
+    /// Which way parts move.
+    pub travel: Travel,
+    /// Columns of the whole picture.
+    pub picture_width_px: usize,
+    /// The region of interest.
+    pub window: Window,
+}
+
+impl Geometry {
+    /// Distance from the picture's upstream edge to the column boundary `x_px` of the region of interest: its first
+    /// pixel spans 0.0 to 1.0. A point's belt coordinate is the belt reading less this distance.
+    pub fn behind_upstream_mm(&self, x_px: f64) -> f64 {
+        let x_px = x_px + self.window.left_px as f64;
+        self.scale.mm(match self.travel {
+            Travel::Right => x_px,
+            Travel::Left => self.picture_width_px as f64 - x_px,
+        })
+    }
+
+    /// Distance from the picture's top edge to the row boundary `y_px` of the region of interest.
+    pub fn below_top_mm(&self, y_px: f64) -> f64 {
+        self.scale.mm(y_px + self.window.top_px as f64)
+    }
+}
+
 /// Along the belt.
 impl Settings {
-    /// The belt coordinate of a point `x_px` from the picture's left edge (the first pixel spans 0.0 to 1.0) when the
-    /// belt reads `belt_mm`: the reading at which the point crossed the upstream edge.
-    pub fn along_mm(&self, belt_mm: f64, x_px: f64) -> f64 {
-        let from_upstream_px = match self.belt.travel {
-            Travel::Right => x_px,
-            Travel::Left => f64::from(self.camera.width_px) - x_px,
-        };
-        belt_mm - self.scale().mm(from_upstream_px)
+    /// How the region of interest lies on the belt.
+    pub fn geometry(&self) -> Geometry {
+        Geometry {
+            scale: self.scale(),
+            travel: self.belt.travel,
+            picture_width_px: self.camera.width_px as usize,
+            window: self.region_px(),
+        }
     }
 
     /// How far the true speed may be from the stated one, as a share of it.
@@ -170,12 +203,9 @@ impl Settings {
 
     /// From the picture's upstream edge to the region's downstream edge.
     pub fn view_mm(&self) -> f64 {
-        let region = self.region_px();
-        let px = match self.belt.travel {
-            Travel::Right => region.left_px + region.width_px,
-            Travel::Left => (self.camera.width_px as usize).saturating_sub(region.left_px),
-        };
-        self.scale().mm(px as f64)
+        let region = self.geometry();
+        let ends = [0.0, region.window.width_px as f64].map(|x_px| region.behind_upstream_mm(x_px));
+        ends[0].max(ends[1])
     }
 
     /// How far past the upstream edge a piece of belt is decided; see the top of this file.
@@ -210,7 +240,7 @@ impl Settings {
     /// Whether the signal to open can leave after the point of decision, and how much there is to spare.
     pub fn reach(&self, outlet: &Outlet) -> Reach {
         let lead_mm = self.fastest_mm_in(self.open_lead_us(outlet));
-        let needed_mm = self.decision_mm() + outlet.margin_mm + lead_mm;
+        let needed_mm = self.decision_mm() + UNSEEN_STEP_MM + outlet.margin_mm + lead_mm;
         let slack_mm = outlet.distance_mm - needed_mm;
         Reach {
             needed_mm,
@@ -417,7 +447,7 @@ mod tests {
         assert_eq!(settings.open_lead_us(nozzle), Micros(19_042));
         assert_eq!(settings.close_lead_us(nozzle), Micros(24_042));
         let reach = settings.reach(nozzle);
-        near(reach.needed_mm, 200.8 + 6.0 + 408.0 * 0.019_042);
+        near(reach.needed_mm, 200.8 + 1.0 + 6.0 + 408.0 * 0.019_042);
         near(reach.slack_mm, 330.0 - reach.needed_mm);
         near(reach.slack_ms, reach.slack_mm / 0.408);
         // (38 + 12) mm at 400 mm/s, and 5 ms less because closing takes longer.
@@ -427,13 +457,20 @@ mod tests {
     }
 
     #[test]
-    fn along_is_the_reading_at_which_the_upstream_edge_is_crossed() {
+    fn columns_are_measured_from_the_upstream_edge_and_rows_from_the_top() {
         let mut settings = stars();
-        assert_eq!(settings.along_mm(1_000.0, 0.0), 1_000.0);
-        assert_eq!(settings.along_mm(1_000.0, 640.0), 840.0);
+        settings.picture.region_mm = Some(RegionMm {
+            left: 10.0,
+            top: 5.0,
+            width: 100.0,
+            height: 20.0,
+        });
+        assert_eq!(settings.geometry().behind_upstream_mm(0.0), 10.0);
+        assert_eq!(settings.geometry().behind_upstream_mm(400.0), 110.0);
+        assert_eq!(settings.geometry().below_top_mm(2.0), 5.5);
         settings.belt.travel = Travel::Left;
-        assert_eq!(settings.along_mm(1_000.0, 640.0), 1_000.0);
-        assert_eq!(settings.along_mm(1_000.0, 600.0), 990.0);
+        assert_eq!(settings.geometry().behind_upstream_mm(0.0), 150.0);
+        assert_eq!(settings.geometry().behind_upstream_mm(400.0), 50.0);
     }
 
     proptest! {
@@ -457,12 +494,12 @@ mod tests {
             settings.camera.latency_ms = latency;
             settings.belt.travel = if leftwards { Travel::Left } else { Travel::Right };
             settings.picture.region_mm = Some(RegionMm { left, top: 0.0, width, height: 100.0 });
-            let window = settings.region_px();
-            let edges = [window.left_px as f64, (window.left_px + window.width_px) as f64];
+            let geometry = settings.geometry();
+            let edges_mm = [0.0, geometry.window.width_px as f64].map(|x_px| geometry.behind_upstream_mm(x_px));
             let fastest = settings.fastest_mm_s();
             let effect_mm = |captured_s: f64| (captured_s + settings.latency_us().as_seconds()) * fastest - piece;
             let sees = |captured_s: f64| {
-                let [one, other] = edges.map(|x_px| settings.along_mm(captured_s * fastest, x_px));
+                let [one, other] = edges_mm.map(|behind_mm| captured_s * fastest - behind_mm);
                 (one.min(other)..=one.max(other)).contains(&piece)
             };
             for frame in 0..((piece + 200.0) / fastest * frames).ceil() as u32 {

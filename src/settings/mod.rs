@@ -24,7 +24,7 @@ mod walk;
 #[cfg(test)]
 mod tests;
 
-pub use derived::{Reach, SWITCH_BYTES};
+pub use derived::{Geometry, Reach, SWITCH_BYTES, UNSEEN_STEP_MM};
 pub use fields::*;
 pub use load::{Loaded, load, parse};
 pub use part::PartSize;

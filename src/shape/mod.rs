@@ -76,7 +76,7 @@ pub struct Common {
 }
 
 /// One view of a whole part, judged.
-#[derive(Clone, Debug, PartialEq)]
+#[derive(Clone, Copy, Debug, PartialEq)]
 pub struct Judged {
     /// Index of the best-fitting shape.
     pub shape: usize,

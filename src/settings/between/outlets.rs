@@ -1,5 +1,6 @@
 //! Whether each outlet can be reached in time and takes only what it is meant to take.
 
+use crate::settings::derived::UNSEEN_STEP_MM;
 use crate::settings::fields::{Outlet, Settings};
 
 use super::{Findings, down, n, up};
@@ -34,11 +35,13 @@ fn reached(settings: &Settings, outlet: &Outlet, key: String, found: &mut Findin
     let lead = settings.open_lead_us(outlet);
     let why = format!(
         "a part is decided {} mm past the upstream edge ({} mm of view, then up to {} mm during the latency of {} ms), \
-         and the signal must leave {} mm of margin and {} mm ({} ms) of lead before the outlet",
+         unseen belt in steps of {} mm, and the signal must leave {} mm of margin and {} mm ({} ms) of lead before the \
+         outlet",
         n(settings.decision_mm()),
         n(settings.view_mm()),
         n(settings.fastest_mm_in(settings.latency_us())),
         n(settings.camera.latency_ms),
+        n(UNSEEN_STEP_MM),
         n(outlet.margin_mm),
         n(settings.fastest_mm_in(lead)),
         n(lead.as_ms()),

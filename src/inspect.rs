@@ -1,0 +1,198 @@
+//! The picture work on one frame: stage, then a verdict for every whole region. It knows nothing of the belt, so frames
+//! may be inspected in any order and on any thread.
+
+use crate::belt::{Cut, Extent, Stretch, View};
+use crate::frames::Frame;
+use crate::settings::{Geometry, Travel};
+use crate::shape::{Judge, Judged};
+use crate::stage::{Region, Stage};
+use crate::units::Micros;
+
+/// The belt that the region of interest shows when the belt reads 0; other readings move it along.
+pub fn seen_at_zero(geometry: &Geometry) -> Stretch {
+    along(geometry, 0.0, geometry.window.width_px as f64)
+}
+
+fn along(geometry: &Geometry, x_min: f64, x_max: f64) -> Stretch {
+    let [a, b] = [x_min, x_max].map(|x_px| -geometry.behind_upstream_mm(x_px));
+    Stretch {
+        from_mm: a.min(b),
+        to_mm: a.max(b),
+    }
+}
+
+/// Where a region lies when the belt reads 0.
+fn extent(geometry: &Geometry, region: &Region) -> Extent {
+    let along = along(geometry, region.x_min.into(), region.x_max.into());
+    Extent {
+        lead_mm: along.from_mm,
+        trail_mm: along.to_mm,
+        top_mm: geometry.below_top_mm(region.y_min.into()),
+        bottom_mm: geometry.below_top_mm(region.y_max.into()),
+    }
+}
+
+fn cut(geometry: &Geometry, region: &Region) -> Cut {
+    let left = region.x_min == 0;
+    let right = region.x_max as usize == geometry.window.width_px;
+    let (upstream, downstream) = match geometry.travel {
+        Travel::Right => (left, right),
+        Travel::Left => (right, left),
+    };
+    let side = region.y_min == 0 || region.y_max as usize == geometry.window.height_px;
+    Cut {
+        upstream,
+        downstream,
+        side,
+    }
+}
+
+/// One region of one frame, in millimetres on a belt that reads 0.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Spot {
+    extent: Extent,
+    along_mm: f64,
+    across_mm: f64,
+    area_mm2: f64,
+    cut: Cut,
+    /// The verdict on it; a region that the picture's edge cuts has none.
+    pub judged: Option<Judged>,
+}
+
+/// Everything that one frame shows.
+#[derive(Clone, Debug, Default, PartialEq)]
+pub struct Look {
+    /// When the frame was captured.
+    pub captured_us: Micros,
+    /// The belt reading that came with it.
+    pub belt_mm: Option<f64>,
+    /// Regions that are no specks.
+    pub spots: Vec<Spot>,
+    /// Specks that were dropped.
+    pub specks: u32,
+}
+
+impl Look {
+    /// The spots on a belt that read `belt_mm` when the frame was captured.
+    pub fn views(&self, belt_mm: f64) -> impl Iterator<Item = View> {
+        self.spots.iter().map(move |spot| View {
+            captured_us: self.captured_us,
+            extent: Extent {
+                lead_mm: spot.extent.lead_mm + belt_mm,
+                trail_mm: spot.extent.trail_mm + belt_mm,
+                ..spot.extent
+            },
+            along_mm: spot.along_mm + belt_mm,
+            across_mm: spot.across_mm,
+            area_mm2: spot.area_mm2,
+            cut: spot.cut,
+            judged: spot.judged,
+        })
+    }
+}
+
+/// Stage and judge with their buffers.
+pub struct Inspector {
+    geometry: Geometry,
+    stage: Stage,
+    judge: Judge,
+}
+
+impl Inspector {
+    /// `stage` must be planned for the size of `geometry.window`.
+    pub fn new(geometry: Geometry, stage: Stage, judge: Judge) -> Self {
+        Self {
+            geometry,
+            stage,
+            judge,
+        }
+    }
+
+    /// Looks at `frame`, which must have the size that the settings state, and fills `look`.
+    pub fn inspect(&mut self, frame: &Frame, look: &mut Look) {
+        let scene = self.stage.run(frame.gray().window(self.geometry.window));
+        look.captured_us = frame.captured_us;
+        look.belt_mm = frame.belt_mm;
+        look.specks = scene.specks;
+        look.spots.clear();
+        for region in &scene.regions {
+            let cut = cut(&self.geometry, region);
+            let runs = &scene.runs[region.runs.clone()];
+            look.spots.push(Spot {
+                extent: extent(&self.geometry, region),
+                along_mm: -self.geometry.behind_upstream_mm(region.centroid_x + 0.5),
+                across_mm: self.geometry.below_top_mm(region.centroid_y + 0.5),
+                area_mm2: self.geometry.scale.mm2(region.area_px as f64),
+                cut,
+                judged: (!cut.any()).then(|| self.judge.judge(region, runs)),
+            });
+        }
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::units::{Scale, Window};
+
+    fn geometry(travel: Travel) -> Geometry {
+        Geometry {
+            scale: Scale { mm_per_px: 0.25 },
+            travel,
+            picture_width_px: 640,
+            window: Window {
+                left_px: 40,
+                top_px: 20,
+                width_px: 560,
+                height_px: 400,
+            },
+        }
+    }
+
+    fn region(x_min: u32, x_max: u32) -> Region {
+        Region {
+            area_px: 1,
+            x_min,
+            y_min: 4,
+            x_max,
+            y_max: 8,
+            centroid_x: 0.0,
+            centroid_y: 0.0,
+            mu20: 0.0,
+            mu11: 0.0,
+            mu02: 0.0,
+            runs: 0..0,
+        }
+    }
+
+    /// `along_mm = belt_mm - (px from the upstream edge) * mm_per_px`; the leading edge has the smaller number.
+    #[test]
+    fn the_leading_edge_is_the_one_farther_from_the_upstream_edge() {
+        let right = extent(&geometry(Travel::Right), &region(0, 100));
+        assert_eq!((right.lead_mm, right.trail_mm), (-35.0, -10.0));
+        assert_eq!((right.top_mm, right.bottom_mm), (6.0, 7.0));
+        let left = extent(&geometry(Travel::Left), &region(0, 100));
+        assert_eq!((left.lead_mm, left.trail_mm), (-150.0, -125.0));
+    }
+
+    #[test]
+    fn the_region_of_interest_is_what_a_frame_covers() {
+        let seen = seen_at_zero(&geometry(Travel::Right));
+        assert_eq!((seen.from_mm, seen.to_mm), (-150.0, -10.0));
+    }
+
+    #[test]
+    fn edges_are_told_by_the_way_parts_travel() {
+        let entering = Cut {
+            upstream: true,
+            ..Cut::default()
+        };
+        assert_eq!(cut(&geometry(Travel::Right), &region(0, 9)), entering);
+        assert_eq!(cut(&geometry(Travel::Left), &region(500, 560)), entering);
+        let side = Region {
+            y_max: 400,
+            ..region(5, 9)
+        };
+        assert!(cut(&geometry(Travel::Right), &side).side);
+    }
+}
