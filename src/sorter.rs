@@ -314,8 +314,14 @@ mod tests {
     fn sorter(unseen: Policy) -> Sorter {
         let plan = Plan {
             speed_mm_s: SPEED_MM_S,
-            gate: Gate { base_mm: 0.75, drift_mm_s: 8.0 },
-            seen_at_zero: Stretch { from_mm: -160.0, to_mm: 0.0 },
+            gate: Gate {
+                base_mm: 0.75,
+                drift_mm_s: 8.0,
+            },
+            seen_at_zero: Stretch {
+                from_mm: -160.0,
+                to_mm: 0.0,
+            },
             decision_mm: DECISION_MM,
             reject_outlet: 0,
             shape_outlets: vec![None],
@@ -335,7 +341,10 @@ mod tests {
     }
 
     fn empty(captured_ms: f64) -> Look {
-        Look { captured_us: Micros::from_ms(captured_ms), ..Look::default() }
+        Look {
+            captured_us: Micros::from_ms(captured_ms),
+            ..Look::default()
+        }
     }
 
     /// Frames at these times, each taking effect 50 ms later, then whatever is left.
@@ -344,7 +353,10 @@ mod tests {
         let mut now = Micros::ZERO;
         for &ms in captured_ms {
             let due = Micros::from_ms(ms + 50.0);
-            while let Some(step) = poll_every_ms.map(Micros::from_ms).filter(|&step| now + step < due) {
+            while let Some(step) = poll_every_ms
+                .map(Micros::from_ms)
+                .filter(|&step| now + step < due)
+            {
                 now += step;
                 events.extend(std::iter::from_fn(|| sorter.poll(now)));
             }
@@ -389,7 +401,11 @@ mod tests {
     fn kept_unseen_belt_is_counted_and_switches_nothing() {
         let mut sorter = sorter(Policy::Keep);
         let events = events(&mut sorter, &[0.0, 300.0, 900.0], None);
-        assert!(events.iter().all(|event| matches!(event, Event::Unseen(..))));
+        assert!(
+            events
+                .iter()
+                .all(|event| matches!(event, Event::Unseen(..)))
+        );
         assert!(sorter.health().unseen_mm > 79.0);
     }
 
@@ -397,7 +413,10 @@ mod tests {
     fn stop_ends_with_everything_off_and_nothing_after() {
         let mut sorter = sorter(Policy::Stop);
         let events = events(&mut sorter, &[0.0, 300.0, 1500.0, 1800.0], None);
-        assert!(matches!(events.last(), Some(Event::Stopped(Cause::Unseen { .. }, _))), "{events:?}");
+        assert!(
+            matches!(events.last(), Some(Event::Stopped(Cause::Unseen { .. }, _))),
+            "{events:?}"
+        );
         assert_eq!(sorter.next_due(), None);
         assert_eq!(sorter.poll(Micros::MAX), None);
     }

@@ -81,7 +81,10 @@ mod tests {
     /// All that is unseen when every frame that shows belt up to `known_mm` has come.
     fn drain(coverage: &mut Coverage, known_mm: f64) -> Vec<Stretch> {
         let mut joined: Vec<Stretch> = Vec::new();
-        while coverage.next_mm().is_some_and(|from_mm| from_mm + DECISION_STEP_MM <= known_mm) {
+        while coverage
+            .next_mm()
+            .is_some_and(|from_mm| from_mm + DECISION_STEP_MM <= known_mm)
+        {
             let piece = coverage.take_unseen().unwrap();
             match joined.last_mut() {
                 Some(last) if last.to_mm == piece.from_mm => last.to_mm = piece.to_mm,

@@ -73,7 +73,9 @@ impl Recording {
 
     /// The frame that was captured at that moment.
     pub fn frame_at(&self, captured_us: Micros) -> Option<usize> {
-        self.entries.binary_search_by_key(&captured_us, |entry| entry.captured_us).ok()
+        self.entries
+            .binary_search_by_key(&captured_us, |entry| entry.captured_us)
+            .ok()
     }
 
     /// The frames from the first to the last. Any number of playbacks may run at once.

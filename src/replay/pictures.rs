@@ -13,7 +13,17 @@ use embedded_graphics::text::{Baseline, Text};
 use image::{Rgb, RgbImage};
 
 use crate::frames::Gray;
-pub struct Marks { pub left_px: i32, pub top_px: i32, pub width_px: usize, pub height_px: usize, pub taught: Vec<bool>, pub missing: Vec<bool>, pub excess: Vec<bool>, pub missing_at: Option<(i32,i32)>, pub excess_at: Option<(i32,i32)> }
+pub struct Marks {
+    pub left_px: i32,
+    pub top_px: i32,
+    pub width_px: usize,
+    pub height_px: usize,
+    pub taught: Vec<bool>,
+    pub missing: Vec<bool>,
+    pub excess: Vec<bool>,
+    pub missing_at: Option<(i32, i32)>,
+    pub excess_at: Option<(i32, i32)>,
+}
 use crate::units::Scale;
 
 /// Picture pixels for one camera pixel.

@@ -457,13 +457,20 @@ mod tests {
     }
 
     #[test]
-    fn along_is_the_reading_at_which_the_upstream_edge_is_crossed() {
+    fn columns_are_measured_from_the_upstream_edge_and_rows_from_the_top() {
         let mut settings = stars();
-        assert_eq!(1_000.0 - settings.geometry().behind_upstream_mm(0.0), 1_000.0);
-        assert_eq!(1_000.0 - settings.geometry().behind_upstream_mm(640.0), 840.0);
+        settings.picture.region_mm = Some(RegionMm {
+            left: 10.0,
+            top: 5.0,
+            width: 100.0,
+            height: 20.0,
+        });
+        assert_eq!(settings.geometry().behind_upstream_mm(0.0), 10.0);
+        assert_eq!(settings.geometry().behind_upstream_mm(400.0), 110.0);
+        assert_eq!(settings.geometry().below_top_mm(2.0), 5.5);
         settings.belt.travel = Travel::Left;
-        assert_eq!(1_000.0 - settings.geometry().behind_upstream_mm(640.0), 1_000.0);
-        assert_eq!(1_000.0 - settings.geometry().behind_upstream_mm(600.0), 990.0);
+        assert_eq!(settings.geometry().behind_upstream_mm(0.0), 150.0);
+        assert_eq!(settings.geometry().behind_upstream_mm(400.0), 50.0);
     }
 
     proptest! {
@@ -487,12 +494,12 @@ mod tests {
             settings.camera.latency_ms = latency;
             settings.belt.travel = if leftwards { Travel::Left } else { Travel::Right };
             settings.picture.region_mm = Some(RegionMm { left, top: 0.0, width, height: 100.0 });
-            let window = settings.region_px();
-            let edges = [window.left_px as f64, (window.left_px + window.width_px) as f64];
+            let geometry = settings.geometry();
+            let edges_mm = [0.0, geometry.window.width_px as f64].map(|x_px| geometry.behind_upstream_mm(x_px));
             let fastest = settings.fastest_mm_s();
             let effect_mm = |captured_s: f64| (captured_s + settings.latency_us().as_seconds()) * fastest - piece;
             let sees = |captured_s: f64| {
-                let [one, other] = edges.map(|x_px| captured_s * fastest - settings.geometry().behind_upstream_mm(x_px));
+                let [one, other] = edges_mm.map(|behind_mm| captured_s * fastest - behind_mm);
                 (one.min(other)..=one.max(other)).contains(&piece)
             };
             for frame in 0..((piece + 200.0) / fastest * frames).ceil() as u32 {

@@ -42,7 +42,9 @@ impl Plan {
             threshold: match settings.picture.threshold {
                 settings::Threshold::Fixed { level } => Threshold::Fixed { level },
                 settings::Threshold::Otsu { floor } => Threshold::Otsu { floor },
-                settings::Threshold::Hysteresis { low, high } => Threshold::Hysteresis { low, high },
+                settings::Threshold::Hysteresis { low, high } => {
+                    Threshold::Hysteresis { low, high }
+                }
             },
             fill_below_px: settings.fill_below_px(),
             speck_below_px: settings.speck_below_px(),
