@@ -55,6 +55,11 @@ impl Outlets {
         self.0 == 0
     }
 
+    /// How many.
+    pub fn count(self) -> u64 {
+        u64::from(self.0.count_ones())
+    }
+
     /// The indices, smallest first.
     pub fn iter(self) -> impl Iterator<Item = usize> {
         (0..MAX_OUTLETS).filter(move |&index| self.has(index))
