@@ -4,24 +4,26 @@ use std::time::{Duration, Instant};
 
 use crate::units::Micros;
 
-/// A monotonic clock that counts from the moment it was made.
+/// A monotonic clock that was set once.
 #[derive(Clone, Copy, Debug)]
 pub struct Monotonic {
-    origin: Instant,
+    set_at: Instant,
+    set_to: Micros,
 }
 
 impl Monotonic {
     /// A clock that reads `now` at this moment, so that a replay can keep the recording's time.
     pub fn reading(now: Micros) -> Self {
-        let since = Duration::from_micros(now.0.max(0).unsigned_abs());
         Self {
-            origin: Instant::now() - since,
+            set_at: Instant::now(),
+            set_to: now,
         }
     }
 
     /// The present reading.
     pub fn now(&self) -> Micros {
-        Micros(i64::try_from(self.origin.elapsed().as_micros()).unwrap_or(i64::MAX))
+        let since = i64::try_from(self.set_at.elapsed().as_micros()).unwrap_or(i64::MAX);
+        self.set_to + Micros(since)
     }
 
     /// Sleeps until the clock reads `until`; returns at once if it already does.

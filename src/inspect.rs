@@ -125,12 +125,16 @@ pub struct Inspector {
 }
 
 impl Inspector {
-    /// `stage` must be planned for the size of `geometry.window`.
-    pub fn new(geometry: Geometry, stage: Stage, judge: Judge) -> Self {
+    /// Makes every buffer. `taught` has one silhouette for each of `settings.shapes`.
+    pub fn new(settings: &Settings, taught: &[Silhouette], level: Level) -> Self {
+        let shapes = settings.shapes.iter().map(|shape| limits(settings, shape));
         Self {
-            geometry,
-            stage,
-            judge,
+            geometry: settings.geometry(),
+            stage: Stage::new(&stage::Plan::of(settings), level),
+            judge: Judge::new(
+                taught.iter().cloned().zip(shapes).collect(),
+                common(settings),
+            ),
         }
     }
 

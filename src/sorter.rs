@@ -6,7 +6,7 @@
 use crate::belt::{Coverage, Gate, Motion, Part, Parts, Stretch, View};
 use crate::health::Health;
 use crate::inspect::{Look, seen_at_zero};
-use crate::reject::{Loss, Planner, Switch};
+use crate::reject::{Loss, OutletTiming, PlanError, Planner, Switch};
 use crate::settings::{Policy, Settings};
 use crate::shape::{Reason, Verdict};
 use crate::units::Micros;
@@ -117,6 +117,16 @@ enum Next {
 }
 
 impl Sorter {
+    /// The sorter that the settings amount to.
+    ///
+    /// # Errors
+    /// More outlets than one station can switch.
+    pub fn of(settings: &Settings) -> Result<Self, PlanError> {
+        let timing = |outlet| OutletTiming::of(outlet, &settings.line);
+        let planner = Planner::new(settings.outlets.iter().map(timing).collect())?;
+        Ok(Self::new(Plan::of(settings), planner))
+    }
+
     /// A belt that reads 0 mm at time 0 and carries nothing yet.
     pub fn new(plan: Plan, planner: Planner) -> Self {
         Self {
@@ -151,8 +161,9 @@ impl Sorter {
         self.health.specks += u64::from(look.specks);
     }
 
-    /// A frame was not judged by its due time: what it showed counts for nothing.
-    pub fn overdue(&mut self) {
+    /// Counts a frame that was not judged by its due time. It must not be taken on a live belt: what it showed would take
+    /// effect late, so its belt is left uncovered.
+    pub fn count_overdue(&mut self) {
         self.health.overdue_frames += 1;
     }
 

@@ -17,7 +17,12 @@ pub(super) fn write_whole(file: &Path, bytes: &[u8]) -> anyhow::Result<()> {
         open.sync_all()?;
         fs::rename(part, file)
     };
-    write().with_context(|| format!("cannot write {}: check the folder and the space left", file.display()))
+    write().with_context(|| {
+        format!(
+            "cannot write {}: check the folder and the space left",
+            file.display()
+        )
+    })
 }
 
 #[cfg(test)]
@@ -30,8 +35,15 @@ mod tests {
         let good = folder.path().join("parts.csv");
         write_whole(&good, b"a,b\n").unwrap();
         assert_eq!(fs::read(&good).unwrap(), b"a,b\n");
-        assert_eq!(fs::read_dir(folder.path()).unwrap().count(), 1, "no .part is left");
+        assert_eq!(
+            fs::read_dir(folder.path()).unwrap().count(),
+            1,
+            "no .part is left"
+        );
         let error = write_whole(&folder.path().join("no/such/parts.csv"), b"").unwrap_err();
-        assert!(format!("{error:#}").starts_with("cannot write "), "{error:#}");
+        assert!(
+            format!("{error:#}").starts_with("cannot write "),
+            "{error:#}"
+        );
     }
 }

@@ -10,7 +10,13 @@
 //! | 2 | bad input (settings, recording, arguments): nothing was done |
 //! | 3 | a device failed |
 
+mod caution;
 mod check;
+mod files;
+mod interrupt;
+mod replay;
+mod results;
+mod station;
 
 use std::io::{self, Write};
 
@@ -30,6 +36,7 @@ pub struct Cli {
 
 #[derive(Debug, Subcommand)]
 enum Command {
+    Replay(replay::Args),
     Check(check::Args),
 }
 
@@ -57,6 +64,7 @@ impl Cli {
     pub fn run(self) -> anyhow::Result<Outcome> {
         let mut out = io::stdout().lock();
         let outcome = match self.command {
+            Command::Replay(args) => args.run(&mut out),
             Command::Check(args) => args.run(&mut out),
         };
         let flushed = out.flush();

@@ -20,7 +20,11 @@ impl Station {
     pub(super) fn open(file: &Path) -> anyhow::Result<Self> {
         let loaded = settings::load(file)?;
         let taught = crate::shape::taught(&loaded)?;
-        Ok(Self { loaded, taught, level: Level::choose()? })
+        Ok(Self {
+            loaded,
+            taught,
+            level: Level::choose()?,
+        })
     }
 
     pub(super) fn settings(&self) -> &Settings {
@@ -34,7 +38,10 @@ impl Station {
     /// A recording whose frames have the size that the settings state.
     pub(super) fn recording(&self, folder: &Path) -> Result<Recording, RecordingError> {
         let camera = &self.settings().camera;
-        let size = SizePx { width_px: camera.width_px, height_px: camera.height_px };
+        let size = SizePx {
+            width_px: camera.width_px,
+            height_px: camera.height_px,
+        };
         Recording::open(folder, Some(size))
     }
 }

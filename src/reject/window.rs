@@ -5,7 +5,6 @@
 use std::collections::VecDeque;
 
 use super::ledger::{Ledger, Loss, Why};
-use super::line::rtu_timing::message_us;
 use crate::belt::Motion;
 use crate::settings::{Line, Outlet};
 use crate::units::Micros;
@@ -29,14 +28,11 @@ pub struct OutletTiming {
     pub max_on_us: Micros,
 }
 
-/// Characters of the request that switches one coil, and of its answer.
-const COIL_MESSAGE_BYTES: usize = 8;
-
 impl OutletTiming {
     /// The timing that the settings amount to, for messages that switch one coil.
     pub fn of(outlet: &Outlet, line: &Line) -> Self {
-        let message = message_us(line.baud, COIL_MESSAGE_BYTES);
-        let request_and_answer = message + message;
+        let message = line.switch_us();
+        let request_and_answer = line.exchange_us();
         let open_delay = Micros::from_ms(outlet.open_delay_ms);
         let close_delay = Micros::from_ms(outlet.close_delay_ms);
         Self {

@@ -3,8 +3,7 @@
 use std::sync::atomic::{AtomicBool, Ordering};
 
 use crate::clock::Monotonic;
-use crate::frames::{Frame, FrameSource};
-use crate::inspect::{Inspector, Look};
+use crate::inspect::Look;
 use crate::sorter::{Event, Sorter};
 use crate::units::Micros;
 
@@ -20,51 +19,20 @@ pub trait Looks {
     fn next_into(&mut self, look: &mut Look) -> Result<bool, Self::Error>;
 }
 
-/// One frame after the other, inspected on the calling thread.
-pub struct OneByOne<'a, S> {
-    /// Where frames come from.
-    pub source: S,
-    /// Who looks at them.
-    pub inspector: &'a mut Inspector,
-    /// The frame's buffer, reused.
-    pub frame: Frame,
-}
-
-impl<S: FrameSource> Looks for OneByOne<'_, S> {
-    type Error = S::Error;
-
-    fn next_into(&mut self, look: &mut Look) -> Result<bool, S::Error> {
-        if !self.source.next_into(&mut self.frame)? {
-            return Ok(false);
-        }
-        self.inspector.inspect(&self.frame, look);
-        Ok(true)
-    }
-}
-
 /// As fast as the PC can, or no faster than the recording's own time.
 pub struct Pace {
     clock: Option<Monotonic>,
     latency_us: Micros,
     stop: &'static AtomicBool,
-    late_frames: u64,
 }
 
 impl Pace {
-    /// `real_time` keeps the recording's time, beginning at the first frame. `stop` ends the replay early.
-    pub fn new(real_time: bool, latency_us: Micros, stop: &'static AtomicBool) -> Self {
-        let clock = real_time.then(|| Monotonic::reading(Micros::ZERO));
+    /// With a `clock` that was set to the recording's time nothing happens before its moment. `stop` ends the replay early.
+    pub fn new(clock: Option<Monotonic>, latency_us: Micros, stop: &'static AtomicBool) -> Self {
         Self {
             clock,
             latency_us,
             stop,
-            late_frames: 0,
-        }
-    }
-
-    fn start(&mut self, first_us: Micros) {
-        if let Some(clock) = &mut self.clock {
-            *clock = Monotonic::reading(first_us);
         }
     }
 
@@ -74,49 +42,39 @@ impl Pace {
         }
     }
 
-    /// Counts a frame that was not judged by its due time. The recording's clock stands still for it, so that a replay
-    /// has the same result on every PC; a live station could not wait.
-    fn judged(&mut self, due_us: Micros) {
-        self.late_frames += u64::from(self.clock.is_some_and(|clock| clock.now() > due_us));
-    }
-
-    /// Frames that would have been overdue on a live belt.
-    pub fn late_frames(&self) -> u64 {
-        self.late_frames
-    }
-
-    /// The moment at which something really happens that is due at `due_us`.
-    pub fn now(&self, due_us: Micros) -> Micros {
-        self.clock.map_or(due_us, |clock| clock.now())
+    fn is_late(&self, due_us: Micros) -> bool {
+        self.clock.is_some_and(|clock| clock.now() > due_us)
     }
 }
 
-/// Runs `looks` through `sorter` to the last due switch and hands every event to `each`.
+/// Runs `looks` through `sorter` to the last due switch and hands every event to `each`; `frame` is told of
+/// every frame that took effect.
 ///
 /// # Errors
 /// The first error of `looks` or of `each`; the sorter is left where it was.
 pub fn drive<L, E>(
     looks: &mut L,
     sorter: &mut Sorter,
-    pace: &mut Pace,
-    mut each: impl FnMut(&Event, &Pace) -> Result<(), E>,
+    pace: &Pace,
+    mut frame: impl FnMut(),
+    mut each: impl FnMut(&Event) -> Result<(), E>,
 ) -> Result<(), E>
 where
     L: Looks,
     E: From<L::Error>,
 {
     let mut look = Look::default();
-    let mut started = false;
     while looks.next_into(&mut look)? {
-        if !started {
-            pace.start(look.captured_us);
-            started = true;
-        }
         let due_us = look.captured_us + pace.latency_us;
-        pace.judged(due_us);
+        if pace.is_late(due_us) {
+            // The recording's clock waits for this frame, so that a replay has the same result on every PC. A live belt
+            // would not.
+            sorter.count_overdue();
+        }
         happen(sorter, due_us, pace, &mut each)?;
         pace.wait(due_us);
         sorter.take(&look);
+        frame();
         if pace.stop.load(Ordering::Relaxed) {
             return Ok(());
         }
@@ -130,12 +88,12 @@ fn happen<E>(
     sorter: &mut Sorter,
     until: Micros,
     pace: &Pace,
-    each: &mut impl FnMut(&Event, &Pace) -> Result<(), E>,
+    each: &mut impl FnMut(&Event) -> Result<(), E>,
 ) -> Result<(), E> {
     while let Some(at) = sorter.next_due().filter(|&at| at <= until) {
         pace.wait(at);
         while let Some(event) = sorter.poll(at) {
-            each(&event, pace)?;
+            each(&event)?;
         }
         if pace.stop.load(Ordering::Relaxed) {
             return Ok(());

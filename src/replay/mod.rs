@@ -8,8 +8,31 @@ mod score;
 mod summary;
 
 pub use ahead::Ahead;
-pub use drive::{Looks, OneByOne, Pace, drive};
+pub use drive::{Looks, Pace, drive};
 pub use outcome::{Outcome, Row, parts_csv, rows};
 pub use pictures::{Sketch, draw_part};
 pub use score::{Match, Score, score};
 pub use summary::{Summary, WorstMargin, summarize};
+
+use crate::inspect::Inspector;
+use crate::recording::{Recording, RecordingError};
+use crate::sorter::{Event, Sorter};
+
+/// Runs a whole recording through `sorter`, with one worker for each of `inspectors`; `frame` is told of every frame.
+///
+/// # Errors
+/// The first of the recording's or of `each`.
+pub fn run<E: From<RecordingError>>(
+    recording: &Recording,
+    inspectors: Vec<Inspector>,
+    sorter: &mut Sorter,
+    pace: &Pace,
+    frame: impl FnMut(),
+    each: impl FnMut(&Event) -> Result<(), E>,
+) -> Result<(), E> {
+    std::thread::scope(|scope| {
+        let read = |k, frame: &mut _| recording.read_into(k, frame);
+        let mut looks = Ahead::spawn(scope, inspectors, recording.len(), read);
+        drive(&mut looks, sorter, pace, frame, each)
+    })
+}

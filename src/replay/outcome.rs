@@ -3,6 +3,7 @@
 use serde::Serialize;
 
 use crate::belt::{Part, Stretch};
+use crate::health::Health;
 use crate::reject::Loss;
 use crate::shape::{Reason, Verdict};
 use crate::sorter::{Cause, Event};
@@ -19,10 +20,8 @@ pub struct Outcome {
     pub losses: Vec<Loss>,
     /// Why and when the sorter stopped by itself.
     pub stopped: Option<(Cause, Micros)>,
-    /// Frames whose verdicts took effect.
-    pub frames: u64,
-    /// Crumbs that were left out.
-    pub specks: u64,
+    /// What the sorter counted.
+    pub health: Health,
 }
 
 impl Outcome {

@@ -49,7 +49,7 @@ pub struct Summary {
 }
 
 /// Sums up what came of a replay.
-pub fn summarize(outcome: &Outcome, settings: &Settings, overdue_frames: u64) -> Summary {
+pub fn summarize(outcome: &Outcome, settings: &Settings) -> Summary {
     let parts = || outcome.parts.iter().map(|(part, _)| part);
     let with = |verdict: Verdict| parts().filter(move |part| part.verdict == verdict);
     let count = |reason: Reason| {
@@ -69,7 +69,7 @@ pub fn summarize(outcome: &Outcome, settings: &Settings, overdue_frames: u64) ->
         .enumerate()
         .map(|(k, outlet)| (outlet.name.clone(), good_to(k)));
     Summary {
-        frames: outcome.frames,
+        frames: outcome.health.frames,
         parts: outcome.parts.len(),
         kept: with(Verdict::Keep).count(),
         rejected: with(Verdict::Reject).count(),
@@ -84,8 +84,8 @@ pub fn summarize(outcome: &Outcome, settings: &Settings, overdue_frames: u64) ->
             .iter()
             .map(|(stretch, _)| stretch.to_mm - stretch.from_mm)
             .sum(),
-        overdue_frames,
-        specks: outcome.specks,
+        overdue_frames: outcome.health.overdue_frames,
+        specks: outcome.health.specks,
         worst_margin: with(Verdict::Keep)
             .filter_map(|part| margin(part, settings))
             .min_by(|a, b| (a.limit_mm - a.value_mm).total_cmp(&(b.limit_mm - b.value_mm))),

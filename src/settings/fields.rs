@@ -303,7 +303,7 @@ pub struct Reject {
 }
 
 /// The serial line to the reject device: Modbus RTU.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
+#[derive(Clone, Copy, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 #[serde(deny_unknown_fields)]
 pub struct Line {
     /// The device's unit address.

@@ -9,7 +9,6 @@ use std::collections::VecDeque;
 use super::coils::{Coils, Request, Style};
 use super::fault::{LineFault, LineFaultKind, Record};
 use super::modbus::{ANSWER_BYTES, AnswerError, Frame, answer_bytes, check_answer};
-use super::rtu_timing::{silence_us, wire_us};
 use super::{Mode, Signal};
 use crate::reject::outlets::MAX_OUTLETS;
 use crate::reject::{Outlets, Switch};
@@ -36,7 +35,7 @@ pub(super) enum Step {
 #[derive(Debug)]
 pub(super) struct Master {
     coils: Coils,
-    baud: u32,
+    line: settings::Line,
     answer_within_us: Micros,
     waiting: VecDeque<(Request, Micros)>,
     flight: Option<Flight>,
@@ -73,7 +72,7 @@ impl Master {
         Self {
             may_be_on: coils.outlets(),
             coils,
-            baud: line.baud,
+            line: *line,
             answer_within_us: Micros::from_ms(line.answer_within_ms),
             waiting: VecDeque::with_capacity(MAX_OUTLETS),
             flight: None,
@@ -83,7 +82,7 @@ impl Master {
             repeat_is_next: false,
             knows_only_fc05: false,
             echoes: false,
-            quiet_at: now + silence_us(line.baud),
+            quiet_at: now + line.t3_5_us(),
             send_anyway_at: None,
             record: Record::default(),
         }
@@ -136,7 +135,7 @@ impl Master {
         if self.waiting.is_empty() && self.repeat.is_empty() {
             return Step::Idle;
         }
-        let patience = silence_us(self.baud) + self.answer_within_us;
+        let patience = self.line.t3_5_us() + self.answer_within_us;
         let send_anyway_at = *self.send_anyway_at.get_or_insert(now + patience);
         let send_at = self.quiet_at.min(send_anyway_at);
         if now < send_at {
@@ -185,7 +184,9 @@ impl Master {
         counts.repeats += u64::from(off.iter().any(|outlet| self.tries[outlet] > 0));
         off.iter().for_each(|outlet| self.tries[outlet] += 1);
         self.may_be_on = self.may_be_on.and(request.on);
-        let on_the_wire = wire_us(self.baud, request.frame.bytes().len() + ANSWER_BYTES);
+        let on_the_wire = self
+            .line
+            .wire_us(request.frame.bytes().len() + ANSWER_BYTES);
         self.flight = Some(Flight {
             request,
             sent_us: now,
@@ -193,13 +194,13 @@ impl Master {
             echo_is_off: false,
         });
         self.got.clear();
-        let gone = now + wire_us(self.baud, request.frame.bytes().len());
-        self.quiet_at = gone + silence_us(self.baud);
+        let gone = now + self.line.wire_us(request.frame.bytes().len());
+        self.quiet_at = gone + self.line.t3_5_us();
     }
 
     /// Takes in bytes that were read at `now`.
     pub(super) fn received(&mut self, now: Micros, bytes: &[u8]) {
-        self.quiet_at = self.quiet_at.max(now + silence_us(self.baud));
+        self.quiet_at = self.quiet_at.max(now + self.line.t3_5_us());
         let Some(flight) = self.flight.take() else {
             self.record.counts.stray_bytes += bytes.len() as u64;
             return;

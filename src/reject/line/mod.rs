@@ -5,7 +5,6 @@ mod dry_run;
 mod fault;
 mod master;
 pub mod modbus;
-pub mod rtu_timing;
 mod serial;
 mod signals;
 
