@@ -1,6 +1,6 @@
 //! What a replay writes and prints.
 
-use std::io::Write;
+use std::io::{Cursor, Write};
 use std::path::Path;
 
 use anyhow::Context;
@@ -9,6 +9,7 @@ use serde_json::{Value, json};
 use super::files::write_whole;
 use super::station::Station;
 use crate::belt::Part;
+use crate::frames::Frame;
 use crate::recording::{Label, Recording};
 use crate::reject::line::{LineCounts, LineFault, Signal, SignalWriter};
 use crate::reject::{Loss, Why};
@@ -71,10 +72,12 @@ impl Results<'_> {
         std::fs::create_dir_all(folder)
             .with_context(|| format!("cannot make {}", folder.display()))?;
         let mut artist = self.station.artist();
+        let mut frame = Frame::default();
         for (part, _) in &self.outcome.parts {
-            let sketch = artist.draw(self.recording, part)?;
-            let mut png = std::io::Cursor::new(Vec::new());
-            sketch.write_to(&mut png, image::ImageFormat::Png)?;
+            let at = self.recording.frame_at(part.spoken_us).context("a part speaks from a frame")?;
+            self.recording.read_into(at, &mut frame)?;
+            let mut png = Cursor::new(Vec::new());
+            artist.draw(&frame, part).write_to(&mut png, image::ImageFormat::Png)?;
             let reasons = part.reasons.to_string();
             let why = if reasons.is_empty() { "keep" } else { &reasons };
             let file = folder.join(format!("part-{:05}-{why}.png", part.number));

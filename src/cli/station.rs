@@ -3,8 +3,9 @@
 use std::path::Path;
 
 use crate::inspect::Inspector;
+use crate::replay::Artist;
 use crate::recording::{Recording, RecordingError, SizePx};
-use crate::settings::{self, Loaded, Settings, SettingsError};
+use crate::settings::{self, Loaded, Settings};
 use crate::shape::Silhouette;
 use crate::stage::Level;
 
@@ -33,6 +34,10 @@ impl Station {
 
     pub(super) fn inspector(&self) -> Inspector {
         Inspector::new(self.settings(), &self.taught, self.level)
+    }
+
+    pub(super) fn artist(&self) -> Artist<'_> {
+        Artist::new(self.settings(), &self.taught, self.level)
     }
 
     /// A recording whose frames have the size that the settings state.

@@ -1,6 +1,7 @@
 //! The same code on a recording: driving it, comparing it with labels, writing down what came of it.
 
 mod ahead;
+mod artist;
 mod drive;
 mod outcome;
 mod pictures;
@@ -8,9 +9,10 @@ mod score;
 mod summary;
 
 pub use ahead::Ahead;
+pub use artist::Artist;
 pub use drive::{Looks, Pace, drive};
 pub use outcome::{Outcome, Row, parts_csv, rows};
-pub use pictures::{Sketch, draw_part};
+
 pub use score::{Match, Score, score};
 pub use summary::{Summary, WorstMargin, summarize};
 

@@ -1,0 +1,90 @@
+//! Finds a part again in the frame that speaks for it, and draws it with its marks and figures.
+
+use image::RgbImage;
+
+use super::pictures::{Sketch, draw_part};
+use crate::belt::Part;
+use crate::frames::{Frame, Gray};
+use crate::inspect::{common, limits};
+use crate::settings::{Geometry, Settings};
+use crate::shape::{Judge, Judged, Silhouette};
+use crate::stage::{Level, Plan, Region, Stage};
+
+/// Stage and judge once more, for pictures.
+pub struct Artist<'a> {
+    settings: &'a Settings,
+    geometry: Geometry,
+    stage: Stage,
+    judge: Judge,
+}
+
+impl<'a> Artist<'a> {
+    /// The same steps that an inspector for these settings takes.
+    pub fn new(settings: &'a Settings, taught: &[Silhouette], level: Level) -> Self {
+        let shapes = settings.shapes.iter().map(|shape| limits(settings, shape));
+        Self {
+            settings,
+            geometry: settings.geometry(),
+            stage: Stage::new(&Plan::of(settings), level),
+            judge: Judge::new(taught.iter().cloned().zip(shapes).collect(), common(settings)),
+        }
+    }
+
+    /// The part as `frame` shows it; `frame` is the one that was captured at `part.spoken_us`.
+    pub fn draw(&mut self, frame: &Frame, part: &Part) -> RgbImage {
+        let belt_mm = frame
+            .belt_mm
+            .unwrap_or_else(|| frame.captured_us.as_seconds() * self.settings.belt.speed_mm_s);
+        let picture = frame.gray().window(self.geometry.window);
+        let scene = self.stage.run(picture);
+        let apart = |region: &Region| {
+            let along_mm = belt_mm - self.geometry.behind_upstream_mm(region.centroid_x + 0.5);
+            let across_mm = self.geometry.below_top_mm(region.centroid_y + 0.5);
+            (along_mm - part.along_mm).hypot(across_mm - part.across_mm)
+        };
+        let nearest = scene.regions.iter().min_by(|a, b| apart(a).total_cmp(&apart(b)));
+        let words = words(part, self.settings);
+        let Some(region) = nearest else { return blank(picture, self.geometry, &words) };
+        let runs = &scene.runs[region.runs.clone()];
+        let marks = part.judged.map(|judged| self.judge.marks(region, runs, &judged));
+        draw_part(&Sketch {
+            picture,
+            part_px: [region.x_min, region.y_min, region.x_max, region.y_max].map(|px| px as usize),
+            marks: marks.as_ref(),
+            scale: self.geometry.scale,
+            words: &words,
+        })
+    }
+}
+
+/// A frame in which nothing is found any more: all of it, with the words.
+fn blank(picture: Gray<'_>, geometry: Geometry, words: &[String]) -> RgbImage {
+    let part_px = [0, 0, picture.width_px, picture.height_px];
+    draw_part(&Sketch { picture, part_px, marks: None, scale: geometry.scale, words })
+}
+
+fn words(part: &Part, settings: &Settings) -> Vec<String> {
+    let mut words = vec![format!("part {}: {}", part.number, part.verdict)];
+    if !part.reasons.is_empty() {
+        words[0] = format!("{} ({})", words[0], part.reasons);
+    }
+    match part.judged {
+        Some(judged) => words.extend(figures(&judged, settings)),
+        None => words.push("never seen whole".to_owned()),
+    }
+    words
+}
+
+fn figures(judged: &Judged, settings: &Settings) -> [String; 2] {
+    let (shape, scale) = (&settings.shapes[judged.shape], settings.scale());
+    let line = |name: &str, px: f64, limit_mm: f64| {
+        let mm = scale.mm(px);
+        let left = limit_mm - mm;
+        let how = if left >= 0.0 { "inside" } else { "beyond" };
+        format!("{name} {mm:5.2} mm, limit {limit_mm:.2}: {:.2} {how}", left.abs())
+    };
+    [
+        line("missing", judged.missing.px, shape.missing_mm),
+        line("excess ", judged.excess.px, shape.excess_mm),
+    ]
+}
