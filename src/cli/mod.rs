@@ -1,1 +1,3 @@
 //! The command line: one file per command.
+
+pub mod draw;

@@ -1,5 +1,7 @@
 //! Gray frames and where they come from.
 
+pub mod drawn;
+
 use crate::units::Micros;
 
 /// One 8-bit gray picture of the belt, rows from top to bottom without padding.
