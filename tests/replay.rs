@@ -31,9 +31,18 @@ fn path(path: &Path) -> &str {
 /// Replays with both tables written; gives their bytes.
 fn tables(recording: &str, more: &[&str]) -> (Vec<u8>, Vec<u8>) {
     let folder = TempDir::new().unwrap();
-    let (parts, signals) = (folder.path().join("parts.csv"), folder.path().join("signals.csv"));
+    let (parts, signals) = (
+        folder.path().join("parts.csv"),
+        folder.path().join("signals.csv"),
+    );
     let mut args = vec!["replay", recording, "--settings", STAR_SETTINGS];
-    args.extend(["--parts", path(&parts), "--signals", path(&signals), "--quiet"]);
+    args.extend([
+        "--parts",
+        path(&parts),
+        "--signals",
+        path(&signals),
+        "--quiet",
+    ]);
     args.extend(more);
     let output = beltwright(&args);
     assert_eq!(output.status.code(), Some(0), "{}", stderr(&output));
@@ -69,18 +78,40 @@ fn without(drop: &[usize]) -> TempDir {
 fn both_demos_agree_with_their_labels() {
     for demo in ["oat-stars", "gaskets"] {
         let (recording, settings) = (format!("demo-frames/{demo}"), format!("config/{demo}.toml"));
-        let output =
-            beltwright(&["replay", &recording, "--settings", &settings, "--check-labels"]);
-        assert_eq!(output.status.code(), Some(0), "{}{}", stdout(&output), stderr(&output));
-        assert!(stdout(&output).contains(" 0 missed;"), "{}", stdout(&output));
-        assert!(stdout(&output).contains("dry run: nothing was sent"), "{}", stdout(&output));
+        let output = beltwright(&[
+            "replay",
+            &recording,
+            "--settings",
+            &settings,
+            "--check-labels",
+        ]);
+        assert_eq!(
+            output.status.code(),
+            Some(0),
+            "{}{}",
+            stdout(&output),
+            stderr(&output)
+        );
+        assert!(
+            stdout(&output).contains(" 0 missed;"),
+            "{}",
+            stdout(&output)
+        );
+        assert!(
+            stdout(&output).contains("dry run: nothing was sent"),
+            "{}",
+            stdout(&output)
+        );
     }
 }
 
 #[test]
 fn every_run_gives_the_same_bytes() {
     let first = tables(STARS, &[]);
-    assert!(first.0.len() > 2000 && first.1.len() > 500, "both tables have rows");
+    assert!(
+        first.0.len() > 2000 && first.1.len() > 500,
+        "both tables have rows"
+    );
     assert_eq!(first, tables(STARS, &[]), "again");
     assert_eq!(first, tables(STARS, &["--workers", "1"]), "one worker");
     assert_eq!(first, tables(STARS, &["--workers", "5"]), "five workers");
@@ -90,7 +121,13 @@ fn every_run_gives_the_same_bytes() {
 #[test]
 fn tables_have_the_documented_columns() {
     let (parts, signals) = tables(STARS, &[]);
-    let head = |bytes: &[u8]| String::from_utf8_lossy(bytes).lines().next().unwrap().to_owned();
+    let head = |bytes: &[u8]| {
+        String::from_utf8_lossy(bytes)
+            .lines()
+            .next()
+            .unwrap()
+            .to_owned()
+    };
     assert_eq!(
         head(&parts),
         "part,along_mm,across_mm,first_us,decided_us,views,shape,angle_deg,flipped,missing_mm,excess_mm,area_mm2,\
@@ -99,8 +136,14 @@ fn tables_have_the_documented_columns() {
     assert_eq!(head(&signals), "due_us,sent_us,outlet,state,bytes_hex,mode");
     let signals = String::from_utf8(signals).unwrap();
     // FC05 for coil 0 of unit 1, ON and OFF: MODBUS Application Protocol V1.1b3, CRC after the serial line guide V1.02.
-    assert!(signals.contains(",on,01 05 00 00 FF 00 8C 3A,dry-run"), "{signals}");
-    assert!(signals.contains(",off,01 05 00 00 00 00 CD CA,dry-run"), "{signals}");
+    assert!(
+        signals.contains(",on,01 05 00 00 FF 00 8C 3A,dry-run"),
+        "{signals}"
+    );
+    assert!(
+        signals.contains(",off,01 05 00 00 00 00 CD CA,dry-run"),
+        "{signals}"
+    );
 }
 
 /// Frames come every 50 mm and show 160 mm, so three in a row must go missing before belt is unseen: 40 mm.
@@ -112,7 +155,10 @@ fn belt_that_no_frame_shows_is_unseen_and_rejected_and_nothing_else_changes() {
     let cut = json(path(without(&gap).path()));
     let unseen = cut["unseen"].as_array().unwrap();
     assert_eq!(unseen.len(), 1, "{unseen:?}");
-    let (from, to) = (unseen[0]["from_mm"].as_f64().unwrap(), unseen[0]["to_mm"].as_f64().unwrap());
+    let (from, to) = (
+        unseen[0]["from_mm"].as_f64().unwrap(),
+        unseen[0]["to_mm"].as_f64().unwrap(),
+    );
     assert!((to - from - 40.0).abs() < 0.01, "{from} to {to}");
     let parts = |run: &Value| -> Vec<Value> {
         let all = run["parts"].as_array().unwrap().iter();
@@ -121,7 +167,13 @@ fn belt_that_no_frame_shows_is_unseen_and_rejected_and_nothing_else_changes() {
             let along: f64 = part["along_mm"].as_str().unwrap().parse().unwrap();
             !(from - 110.0..=to + 110.0).contains(&along)
         };
-        all.filter(outside).map(|part| { let mut part = part.clone(); part["part"] = Value::Null; part }).collect()
+        all.filter(outside)
+            .map(|part| {
+                let mut part = part.clone();
+                part["part"] = Value::Null;
+                part
+            })
+            .collect()
     };
     assert!(parts(&whole).len() > 10);
     assert_eq!(parts(&whole), parts(&cut));
@@ -133,7 +185,14 @@ fn belt_that_no_frame_shows_is_unseen_and_rejected_and_nothing_else_changes() {
 fn pictures_show_each_part() {
     let folder = TempDir::new().unwrap();
     let out: PathBuf = folder.path().join("pictures");
-    let output = beltwright(&["replay", STARS, "--settings", STAR_SETTINGS, "--pictures", path(&out)]);
+    let output = beltwright(&[
+        "replay",
+        STARS,
+        "--settings",
+        STAR_SETTINGS,
+        "--pictures",
+        path(&out),
+    ]);
     assert_eq!(output.status.code(), Some(0), "{}", stderr(&output));
     let parts = json(STARS)["parts"].as_array().unwrap().len();
     assert_eq!(fs::read_dir(&out).unwrap().count(), parts);
@@ -149,10 +208,23 @@ fn disagreement_with_labels_is_listed_and_ends_with_1() {
     let wrong = labels.replacen(",keep,", ",reject,", 1);
     assert_ne!(labels, wrong);
     fs::write(folder.path().join("labels.csv"), wrong).unwrap();
-    let args = ["replay", path(folder.path()), "--settings", STAR_SETTINGS, "--check-labels"];
+    let args = [
+        "replay",
+        path(folder.path()),
+        "--settings",
+        STAR_SETTINGS,
+        "--check-labels",
+    ];
     let output = beltwright(&args);
     assert_eq!(output.status.code(), Some(1), "{}", stderr(&output));
-    assert_eq!(stdout(&output).matches("missed (should be rejected").count(), 1, "{}", stdout(&output));
+    assert_eq!(
+        stdout(&output)
+            .matches("missed (should be rejected")
+            .count(),
+        1,
+        "{}",
+        stdout(&output)
+    );
 }
 
 /// Each of these must be refused with one sentence and exit code 2, before anything is written.
@@ -165,27 +237,72 @@ fn bad_input_ends_with_2_and_writes_nothing() {
         all.extend(args);
         all.extend(["--parts", path(&parts)]);
         let output = beltwright(&all);
-        assert_eq!(output.status.code(), Some(2), "{args:?}: {}", stderr(&output));
-        assert!(stderr(&output).contains(says), "{args:?}: {}", stderr(&output));
+        assert_eq!(
+            output.status.code(),
+            Some(2),
+            "{args:?}: {}",
+            stderr(&output)
+        );
+        assert!(
+            stderr(&output).contains(says),
+            "{args:?}: {}",
+            stderr(&output)
+        );
         assert!(!parts.exists(), "{args:?}");
     };
-    refused(&["no/such/recording", "--settings", STAR_SETTINGS], "frames.csv");
+    refused(
+        &["no/such/recording", "--settings", STAR_SETTINGS],
+        "frames.csv",
+    );
     refused(&[STARS, "--settings", "no/such.toml"], "no/such.toml");
-    refused(&["demo-frames/gaskets", "--settings", "Cargo.toml"], "Cargo.toml");
-    refused(&[STARS, "--settings", STAR_SETTINGS, "--line", "/dev/null"], "--armed");
-    refused(&[path(folder.path()), "--settings", STAR_SETTINGS, "--check-labels"], "no labels.csv");
-    let truncated = fs::read_dir(folder.path()).unwrap().map(|entry| entry.unwrap().path());
-    let mut pictures: Vec<_> = truncated.filter(|file| file.extension().is_some_and(|e| e == "png")).collect();
+    refused(
+        &["demo-frames/gaskets", "--settings", "Cargo.toml"],
+        "Cargo.toml",
+    );
+    refused(
+        &[STARS, "--settings", STAR_SETTINGS, "--line", "/dev/null"],
+        "--armed",
+    );
+    refused(
+        &[
+            path(folder.path()),
+            "--settings",
+            STAR_SETTINGS,
+            "--check-labels",
+        ],
+        "no labels.csv",
+    );
+    let truncated = fs::read_dir(folder.path())
+        .unwrap()
+        .map(|entry| entry.unwrap().path());
+    let mut pictures: Vec<_> = truncated
+        .filter(|file| file.extension().is_some_and(|e| e == "png"))
+        .collect();
     pictures.sort();
     let bytes = fs::read(&pictures[5]).unwrap();
     fs::write(&pictures[5], &bytes[..bytes.len() / 2]).unwrap();
-    refused(&[path(folder.path()), "--settings", STAR_SETTINGS], path(&pictures[5]));
+    refused(
+        &[path(folder.path()), "--settings", STAR_SETTINGS],
+        path(&pictures[5]),
+    );
 }
 
 #[test]
 fn nothing_is_armed_unless_the_settings_allow_it() {
-    let args = ["replay", STARS, "--settings", STAR_SETTINGS, "--line", "/dev/null", "--armed"];
+    let args = [
+        "replay",
+        STARS,
+        "--settings",
+        STAR_SETTINGS,
+        "--line",
+        "/dev/null",
+        "--armed",
+    ];
     let output = beltwright(&args);
     assert_eq!(output.status.code(), Some(2));
-    assert!(stderr(&output).contains("reject.allow_armed is false"), "{}", stderr(&output));
+    assert!(
+        stderr(&output).contains("reject.allow_armed is false"),
+        "{}",
+        stderr(&output)
+    );
 }

@@ -12,6 +12,7 @@
 
 mod caution;
 mod check;
+mod draw;
 mod files;
 mod interrupt;
 mod replay;
@@ -38,6 +39,7 @@ pub struct Cli {
 enum Command {
     Replay(replay::Args),
     Check(check::Args),
+    Draw(draw::Args),
 }
 
 /// How a command ended when nothing failed.
@@ -66,6 +68,7 @@ impl Cli {
         let outcome = match self.command {
             Command::Replay(args) => args.run(&mut out),
             Command::Check(args) => args.run(&mut out),
+            Command::Draw(args) => args.run(),
         };
         let flushed = out.flush();
         match outcome.and_then(|outcome| Ok(flushed.map(|()| outcome)?)) {

@@ -74,10 +74,15 @@ impl Results<'_> {
         let mut artist = self.station.artist();
         let mut frame = Frame::default();
         for (part, _) in &self.outcome.parts {
-            let at = self.recording.frame_at(part.spoken_us).context("a part speaks from a frame")?;
+            let at = self
+                .recording
+                .frame_at(part.spoken_us)
+                .context("a part speaks from a frame")?;
             self.recording.read_into(at, &mut frame)?;
             let mut png = Cursor::new(Vec::new());
-            artist.draw(&frame, part).write_to(&mut png, image::ImageFormat::Png)?;
+            artist
+                .draw(&frame, part)
+                .write_to(&mut png, image::ImageFormat::Png)?;
             let reasons = part.reasons.to_string();
             let why = if reasons.is_empty() { "keep" } else { &reasons };
             let file = folder.join(format!("part-{:05}-{why}.png", part.number));

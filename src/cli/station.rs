@@ -3,8 +3,8 @@
 use std::path::Path;
 
 use crate::inspect::Inspector;
-use crate::replay::Artist;
 use crate::recording::{Recording, RecordingError, SizePx};
+use crate::replay::Artist;
 use crate::settings::{self, Loaded, Settings};
 use crate::shape::Silhouette;
 use crate::stage::Level;

@@ -1,5 +1,7 @@
 //! Gray frames and where they come from.
 
+pub mod drawn;
+
 use crate::units::Micros;
 pub use crate::units::Window;
 

@@ -26,7 +26,10 @@ impl<'a> Artist<'a> {
             settings,
             geometry: settings.geometry(),
             stage: Stage::new(&Plan::of(settings), level),
-            judge: Judge::new(taught.iter().cloned().zip(shapes).collect(), common(settings)),
+            judge: Judge::new(
+                taught.iter().cloned().zip(shapes).collect(),
+                common(settings),
+            ),
         }
     }
 
@@ -42,11 +45,18 @@ impl<'a> Artist<'a> {
             let across_mm = self.geometry.below_top_mm(region.centroid_y + 0.5);
             (along_mm - part.along_mm).hypot(across_mm - part.across_mm)
         };
-        let nearest = scene.regions.iter().min_by(|a, b| apart(a).total_cmp(&apart(b)));
+        let nearest = scene
+            .regions
+            .iter()
+            .min_by(|a, b| apart(a).total_cmp(&apart(b)));
         let words = words(part, self.settings);
-        let Some(region) = nearest else { return blank(picture, self.geometry, &words) };
+        let Some(region) = nearest else {
+            return blank(picture, self.geometry, &words);
+        };
         let runs = &scene.runs[region.runs.clone()];
-        let marks = part.judged.map(|judged| self.judge.marks(region, runs, &judged));
+        let marks = part
+            .judged
+            .map(|judged| self.judge.marks(region, runs, &judged));
         draw_part(&Sketch {
             picture,
             part_px: [region.x_min, region.y_min, region.x_max, region.y_max].map(|px| px as usize),
@@ -60,7 +70,13 @@ impl<'a> Artist<'a> {
 /// A frame in which nothing is found any more: all of it, with the words.
 fn blank(picture: Gray<'_>, geometry: Geometry, words: &[String]) -> RgbImage {
     let part_px = [0, 0, picture.width_px, picture.height_px];
-    draw_part(&Sketch { picture, part_px, marks: None, scale: geometry.scale, words })
+    draw_part(&Sketch {
+        picture,
+        part_px,
+        marks: None,
+        scale: geometry.scale,
+        words,
+    })
 }
 
 fn words(part: &Part, settings: &Settings) -> Vec<String> {
@@ -81,7 +97,10 @@ fn figures(judged: &Judged, settings: &Settings) -> [String; 2] {
         let mm = scale.mm(px);
         let left = limit_mm - mm;
         let how = if left >= 0.0 { "inside" } else { "beyond" };
-        format!("{name} {mm:5.2} mm, limit {limit_mm:.2}: {:.2} {how}", left.abs())
+        format!(
+            "{name} {mm:5.2} mm, limit {limit_mm:.2}: {:.2} {how}",
+            left.abs()
+        )
     };
     [
         line("missing", judged.missing.px, shape.missing_mm),

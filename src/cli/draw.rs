@@ -1,0 +1,217 @@
+//! `draw`: a recording from a seed, labelled from the drawn geometry.
+
+use std::fmt::Write as _;
+use std::path::{Path, PathBuf};
+
+use anyhow::Context;
+
+use super::Outcome;
+use crate::frames::drawn::{Drawing, DrawnBelt, Scene, Truth, mask, truths};
+use crate::frames::{Frame, FrameSource};
+use crate::recording::{Label, LabelWriter, Writer};
+use crate::settings::{self, Settings};
+use crate::shape::Verdict;
+use crate::units::Micros;
+
+/// Draw a recording with labels that follow from the drawn geometry, never from a verdict of this program.
+#[derive(Clone, Debug, clap::Args)]
+#[command(group(clap::ArgGroup::new("what").args(["out", "mask"]).required(true).multiple(true)))]
+pub(super) struct Args {
+    /// What lies on the belt: oat-stars or gaskets.
+    scene: Scene,
+    /// Settings that name the camera, the belt and the limits.
+    #[arg(long, value_name = "FILE.toml")]
+    settings: PathBuf,
+    /// How many parts.
+    #[arg(long, default_value_t = 30)]
+    parts: u64,
+    /// The same seed and settings give the same recording.
+    #[arg(long, default_value_t = 1)]
+    seed: u64,
+    /// When the first frame is captured, in microseconds.
+    #[arg(long, value_name = "US", default_value_t = 0, value_parser = clap::value_parser!(i64).range(0..=1 << 52))]
+    first_us: i64,
+    /// A new folder for the recording.
+    #[arg(long, value_name = "FOLDER")]
+    out: Option<PathBuf>,
+    /// A new PNG file for the nominal shape, to be taught from.
+    #[arg(long, value_name = "FILE.png")]
+    mask: Option<PathBuf>,
+}
+
+impl Args {
+    /// Writes what was asked for: `frames.csv` with its pictures, `labels.csv`, `truth.csv` and `recording.toml` into the
+    /// new folder, the nominal shape into the new picture.
+    pub(super) fn run(&self) -> anyhow::Result<Outcome> {
+        let loaded = settings::load(&self.settings)?;
+        draw(self, &loaded.settings)?;
+        Ok(Outcome::Done)
+    }
+}
+
+fn draw(args: &Args, settings: &Settings) -> anyhow::Result<()> {
+    let drawing = Drawing {
+        scene: args.scene,
+        parts: args.parts,
+        seed: args.seed,
+        first_us: Micros(args.first_us),
+    };
+    let belt = DrawnBelt::new(&drawing, settings)?;
+    if let Some(file) = &args.mask {
+        write_mask(args.scene, settings, file)?;
+    }
+    if let Some(folder) = &args.out {
+        let mut recording = Writer::create(folder)?;
+        recording.write_notes(&notes(&drawing, settings))?;
+        write_truths(&drawing, settings, folder)?;
+        write_frames(belt, &mut recording)?;
+    }
+    Ok(())
+}
+
+fn write_mask(scene: Scene, settings: &Settings, file: &Path) -> anyhow::Result<()> {
+    let mask = mask(scene, settings.camera.mm_per_px);
+    let picture = image::GrayImage::from_raw(mask.width_px, mask.height_px, mask.pixels)
+        .context("a mask has as many pixels as its size says")?;
+    let mut bytes = std::io::Cursor::new(Vec::new());
+    picture.write_to(&mut bytes, image::ImageFormat::Png)?;
+    std::fs::File::create_new(file)
+        .and_then(|mut made| std::io::Write::write_all(&mut made, bytes.get_ref()))
+        .with_context(|| format!("{}: cannot write it", file.display()))
+}
+
+fn write_frames(mut belt: DrawnBelt, recording: &mut Writer) -> anyhow::Result<()> {
+    let mut frame = Frame::default();
+    while belt.next_into(&mut frame)? {
+        recording.write(&frame)?;
+    }
+    Ok(())
+}
+
+const TRUTH_HEADER: [&str; 12] = [
+    "part",
+    "thing",
+    "along_mm",
+    "across_mm",
+    "angle_deg",
+    "flipped",
+    "kind",
+    "scale",
+    "missing_mm",
+    "excess_mm",
+    "verdict",
+    "reasons",
+];
+
+/// `truth.csv` has a row for every part, `labels.csv` one for everything the camera sees as one thing.
+fn write_truths(drawing: &Drawing, settings: &Settings, folder: &Path) -> anyhow::Result<()> {
+    let file = folder.join("truth.csv");
+    let mut table = csv::Writer::from_path(&file)?;
+    table.write_record(TRUTH_HEADER)?;
+    let mut labels = LabelWriter::create(folder)?;
+    let mut thing: Vec<Truth> = Vec::new();
+    for truth in truths(drawing, settings)? {
+        table.write_record(row(&truth))?;
+        if thing
+            .first()
+            .is_some_and(|first| first.thing != truth.thing)
+        {
+            labels.write(&label(&thing))?;
+            thing.clear();
+        }
+        thing.push(truth);
+    }
+    labels.write(&label(&thing))?;
+    table.flush()?;
+    Ok(labels.finish()?)
+}
+
+fn row(truth: &Truth) -> [String; 12] {
+    [
+        truth.part.to_string(),
+        truth.thing.to_string(),
+        format!("{:.3}", truth.along_mm),
+        format!("{:.3}", truth.across_mm),
+        format!("{:.2}", truth.angle_deg),
+        truth.flipped.to_string(),
+        truth.kind.name().to_owned(),
+        format!("{:.5}", truth.scale),
+        format!("{:.3}", truth.missing_mm),
+        format!("{:.3}", truth.excess_mm),
+        verdict(truth).to_string(),
+        truth.against.to_string(),
+    ]
+}
+
+fn verdict(truth: &Truth) -> Verdict {
+    if truth.against.any() {
+        Verdict::Reject
+    } else {
+        Verdict::Keep
+    }
+}
+
+/// The label of one thing: parts that touch are one, in their middle.
+fn label(thing: &[Truth]) -> Label {
+    let mean = |of: fn(&Truth) -> f64| thing.iter().map(of).sum::<f64>() / thing.len() as f64;
+    let rejected = thing.iter().any(|truth| truth.against.any());
+    let mut note = String::new();
+    for truth in thing {
+        let gap = if note.is_empty() { "" } else { "; " };
+        let _ = write!(note, "{gap}part {}: {}", truth.part, truth.kind.name());
+    }
+    Label {
+        along_mm: mean(|truth| truth.along_mm),
+        across_mm: mean(|truth| truth.across_mm),
+        verdict: if rejected {
+            Verdict::Reject
+        } else {
+            Verdict::Keep
+        },
+        note,
+    }
+}
+
+fn notes(drawing: &Drawing, settings: &Settings) -> String {
+    let (camera, belt) = (&settings.camera, &settings.belt);
+    let shape = settings.shapes.first();
+    let limit = |of: fn(&crate::settings::Shape) -> f64| shape.map_or(f64::NAN, of);
+    format!(
+        "# A drawing, not a camera's recording: `beltwright draw {scene} --parts {parts} --seed {seed} --first-us {first_us}`.\n\
+         # labels.csv and truth.csv follow from the drawn geometry alone. A label stands for what the camera sees as one\n\
+         # thing: two parts that touch have one label, in their middle, and a row each in truth.csv.\n\
+         scene = \"{scene}\"\n\
+         parts = {parts}\n\
+         seed = {seed}\n\
+         first_us = {first_us}\n\
+         \n\
+         [camera]\n\
+         width_px = {width}\n\
+         height_px = {height}\n\
+         mm_per_px = {mm_per_px:?}\n\
+         frames_per_s = {frames_per_s:?}\n\
+         exposure_ms = {exposure_ms:?}\n\
+         \n\
+         [belt]\n\
+         speed_mm_s = {speed:?}\n\
+         travel = \"{travel}\"\n\
+         \n\
+         # The limits by which the labels were decided.\n\
+         [limits]\n\
+         missing_mm = {missing:?}\n\
+         excess_mm = {excess:?}\n",
+        scene = drawing.scene.name(),
+        parts = drawing.parts,
+        seed = drawing.seed,
+        first_us = drawing.first_us.0,
+        width = camera.width_px,
+        height = camera.height_px,
+        mm_per_px = camera.mm_per_px,
+        frames_per_s = camera.frames_per_s,
+        exposure_ms = camera.exposure_ms,
+        speed = belt.speed_mm_s,
+        travel = format!("{:?}", belt.travel).to_lowercase(),
+        missing = limit(|shape| shape.missing_mm),
+        excess = limit(|shape| shape.excess_mm),
+    )
+}

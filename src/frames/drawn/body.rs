@@ -1,0 +1,171 @@
+//! One drawn part in its own coordinates: the nominal shape, a little larger or smaller, with bites and burrs.
+
+use std::sync::Arc;
+
+use super::nominal::Nominal;
+use super::plane::Point;
+use super::search::{Square, highest};
+
+/// A plain figure that is cut away from a part or added to it.
+#[derive(Clone, Copy, Debug)]
+pub(super) enum Form {
+    /// A disc.
+    Disc { centre: Point, radius_mm: f64 },
+    /// A line, as thick as a pen of this radius.
+    Stroke {
+        from: Point,
+        to: Point,
+        radius_mm: f64,
+    },
+    /// Everything beyond a straight line. `outward` has unit length.
+    Beyond { at: Point, outward: Point },
+    /// An endless wedge around the line from `apex` along `axis`, grown by a pen of this radius.
+    Wedge {
+        apex: Point,
+        axis: Point,
+        half_rad: f64,
+        radius_mm: f64,
+    },
+}
+
+impl Form {
+    /// Distance to its outline, negative inside.
+    pub(super) fn signed_mm(&self, point: Point) -> f64 {
+        match *self {
+            Self::Disc { centre, radius_mm } => (point - centre).length() - radius_mm,
+            Self::Stroke {
+                from,
+                to,
+                radius_mm,
+            } => {
+                let (away, whole) = (point - from, to - from);
+                let share = (away.dot(whole) / whole.dot(whole)).clamp(0.0, 1.0);
+                (away - whole * share).length() - radius_mm
+            }
+            Self::Beyond { at, outward } => -(point - at).dot(outward),
+            Self::Wedge {
+                apex,
+                axis,
+                half_rad,
+                radius_mm,
+            } => {
+                let away = point - apex;
+                // Mirrored to one side of the axis, then measured to that side's edge.
+                let away = Point::new(away.dot(axis), axis.cross(away).abs());
+                let edge = Point::towards(half_rad);
+                let behind = away.dot(edge) < 0.0;
+                (if behind {
+                    away.length()
+                } else {
+                    edge.cross(away)
+                }) - radius_mm
+            }
+        }
+    }
+}
+
+/// How a part differs from its nominal shape: `(nominal * scale - cuts) + burrs`.
+#[derive(Clone, Debug)]
+pub(super) struct Body {
+    pub nominal: Arc<Nominal>,
+    /// Natural variation of size.
+    pub scale: f64,
+    pub cuts: Vec<Form>,
+    pub burrs: Vec<Form>,
+}
+
+/// How accurately figures and extents are found.
+const TOLERANCE_MM: f64 = 0.005;
+/// No drawn burr reaches farther than this beyond the nominal shape.
+pub(super) const LONGEST_BURR_MM: f64 = 12.0;
+
+impl Body {
+    /// Negative inside the drawn part. It changes by at most 1 mm per mm, has the right sign everywhere, and is the
+    /// distance to the outline except around the corners that cuts and burrs make.
+    pub(super) fn signed_mm(&self, point: Point) -> f64 {
+        let whole_mm = self.scale * self.nominal.outline.signed_mm(point * (1.0 / self.scale));
+        let cut = |least_mm: f64, form: &Form| least_mm.max(-form.signed_mm(point));
+        let grown = |least_mm: f64, form: &Form| least_mm.min(form.signed_mm(point));
+        let cut_mm = self.cuts.iter().fold(whole_mm, cut);
+        self.burrs.iter().fold(cut_mm, grown)
+    }
+
+    /// The largest inside distance of the nominal shape over what is missing of it: how deep a bite goes. A tip that
+    /// has broken off is as deep as the tip is thick, not as it is long.
+    pub(super) fn missing_mm(&self) -> f64 {
+        let nominal = &self.nominal.outline;
+        highest(
+            Square::around(self.nominal.radius_mm),
+            TOLERANCE_MM,
+            |p| -nominal.signed_mm(p),
+            |p| -self.signed_mm(p),
+        )
+    }
+
+    /// The largest distance to the nominal shape over what is too much: how far a burr sticks out.
+    pub(super) fn excess_mm(&self) -> f64 {
+        let nominal = &self.nominal.outline;
+        highest(
+            self.all(),
+            TOLERANCE_MM,
+            |p| nominal.signed_mm(p),
+            |p| self.signed_mm(p),
+        )
+    }
+
+    /// How far the part reaches from its origin towards `direction`, a way of length 1.
+    pub(super) fn reach_mm(&self, direction: Point) -> f64 {
+        highest(
+            self.all(),
+            TOLERANCE_MM,
+            |p| p.dot(direction),
+            |p| self.signed_mm(p),
+        )
+    }
+
+    fn all(&self) -> Square {
+        Square::around(self.nominal.radius_mm + LONGEST_BURR_MM)
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    /// Elementary distances to plain figures.
+    #[test]
+    fn distances_to_plain_figures() {
+        let at = Point::new;
+        let stroke = Form::Stroke {
+            from: at(0.0, 0.0),
+            to: at(4.0, 0.0),
+            radius_mm: 0.5,
+        };
+        let wedge = Form::Wedge {
+            apex: at(0.0, 0.0),
+            axis: at(0.0, 1.0),
+            half_rad: std::f64::consts::FRAC_PI_4,
+            radius_mm: 0.0,
+        };
+        let beyond = Form::Beyond {
+            at: at(0.0, 2.0),
+            outward: at(0.0, 1.0),
+        };
+        for (form, point, want_mm) in [
+            (stroke, at(2.0, 3.0), 2.5),
+            (stroke, at(7.0, 4.0), 4.5),
+            (stroke, at(1.0, 0.25), -0.25),
+            (wedge, at(1.0, 0.0), 0.5_f64.sqrt()),
+            (wedge, at(0.0, 1.0), -(0.5_f64.sqrt())),
+            (wedge, at(-3.0, -4.0), 5.0),
+            (beyond, at(9.0, 5.0), -3.0),
+            (beyond, at(9.0, 1.5), 0.5),
+        ] {
+            let got_mm = form.signed_mm(point);
+            assert!(
+                (got_mm - want_mm).abs() < 1e-12,
+                "{form:?} {point:?} {got_mm}"
+            );
+        }
+    }
+}
