@@ -46,6 +46,8 @@ mod element;
 mod slide;
 mod tophat;
 
+mod morphology;
+
 mod forest;
 mod runs;
 
@@ -59,8 +61,10 @@ mod plain;
 mod steps;
 
 pub use kernels::{KernelError, Level};
+pub use morphology::{dilation, erosion};
 pub use pipeline::Stage;
 pub use plan::{Element, Plan, Polarity, Threshold};
 pub use scene::{Region, Run, Scene};
 pub use steps::Steps;
 pub use threshold::otsu_level;
+pub use tophat::TopHat;

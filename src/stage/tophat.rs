@@ -20,7 +20,7 @@ use crate::frames::Gray;
 const STRIP: usize = 64;
 
 /// The top-hat with its buffers.
-pub(crate) struct TopHat {
+pub struct TopHat {
     level: Level,
     polarity: Polarity,
     width: usize,
@@ -38,6 +38,7 @@ pub(crate) struct TopHat {
 }
 
 impl TopHat {
+    /// Makes the buffers for the size, the polarity and the element of `plan`.
     pub fn new(plan: &Plan, level: Level) -> Self {
         let Segments {
             across,
@@ -71,9 +72,24 @@ impl TopHat {
         }
     }
 
+    /// Writes the top-hat to `out`, without padding.
+    ///
+    /// # Panics
+    /// If the picture has not the planned size or `out` is shorter.
+    pub fn picture(&mut self, picture: Gray<'_>, out: &mut [u8]) {
+        assert_eq!(
+            (picture.width_px, picture.height_px),
+            (self.width, self.height)
+        );
+        let (level, width) = (self.level, self.width);
+        self.run(picture, |y, upper, lower| {
+            level.subtract(upper, lower, &mut out[y * width..][..width]);
+        });
+    }
+
     /// Calls `sink` with every row in order: its number, and two rows whose difference (first minus second, never
     /// negative) is the top-hat.
-    pub fn run(&mut self, picture: Gray, mut sink: impl FnMut(usize, &[u8], &[u8])) {
+    pub(crate) fn run(&mut self, picture: Gray, mut sink: impl FnMut(usize, &[u8], &[u8])) {
         self.down_first.restart();
         self.down_second.restart();
         if self.diagonals.is_some() {
@@ -250,7 +266,7 @@ fn turned(pixels: &mut [u8]) -> RowsMut<'_> {
 /// In a picture whose rows begin every `stride` bytes the pixel below and to the right is `stride + 1` bytes on: read
 /// with rows of that length, diagonals stand upright, and the pass down the columns does for them too. `stride - 1` does
 /// for the other diagonal. The margin is so wide that a diagonal segment cannot reach another row's pixels.
-struct Diagonals {
+pub(crate) struct Diagonals {
     margin: usize,
     stride: usize,
     falling: [Slide; 2],
@@ -266,7 +282,7 @@ struct Diagonals {
 }
 
 impl Diagonals {
-    fn new(ops: [Extremum; 2], steps: usize, width: usize, height: usize) -> Self {
+    pub fn new(ops: [Extremum; 2], steps: usize, width: usize, height: usize) -> Self {
         let stride = width + 2 * steps;
         let bytes = stride * (height + 2 * steps);
         let rows = |length: usize| bytes.div_ceil(length);
@@ -293,7 +309,8 @@ impl Diagonals {
         self.margin * self.stride + self.margin
     }
 
-    fn input(&mut self) -> RowsMut<'_> {
+    /// Where the picture goes.
+    pub fn input(&mut self) -> RowsMut<'_> {
         let start = self.origin();
         RowsMut {
             pixels: &mut self.flat[start..],
@@ -301,11 +318,13 @@ impl Diagonals {
         }
     }
 
-    fn shrink(&mut self, level: Level) {
+    /// The first extremum, from the input.
+    pub fn shrink(&mut self, level: Level) {
         self.both(level, 0);
     }
 
-    fn shrunk_and_input(&mut self) -> (Rows<'_>, RowsMut<'_>) {
+    /// What [`Self::shrink`] made, and where the input of [`Self::grow`] goes.
+    pub fn shrunk_and_input(&mut self) -> (Rows<'_>, RowsMut<'_>) {
         let start = self.origin();
         let src = Rows {
             pixels: &self.done[start..],
