@@ -3,7 +3,7 @@
 use std::ops::Range;
 
 use super::element::Span;
-use super::kernels::{Extremum, Job, Level, Rows, RowsMut};
+use super::kernels::{Extremum, Job, Level, Rows, RowsMut, suffix_stride};
 
 /// Bands have about this many rows, so that what one step writes is still in the cache for the next.
 const BAND_ROWS: usize = 64;
@@ -36,7 +36,7 @@ impl Slide {
             span,
             width_px,
             height_px,
-            suffix: vec![op.neutral(); (span.size() + 1) * width_px],
+            suffix: vec![op.neutral(); (span.size() + 1) * suffix_stride(width_px)],
             next: 0,
             blocks: match height_px {
                 0 => 0,
@@ -97,7 +97,7 @@ impl Slide {
         if let Some(job) = self.job(ready, most) {
             let suffix = RowsMut {
                 pixels: &mut self.suffix,
-                stride_px: self.width_px,
+                stride_px: suffix_stride(self.width_px),
             };
             level.slide(self.op, job, src, dst, suffix);
             self.next += job.count;

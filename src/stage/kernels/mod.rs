@@ -2,7 +2,10 @@
 //!
 //! Only this module chooses between them. [`Level::choose`] looks at the CPU once; the environment variable
 //! `BELTWRIGHT_KERNELS` forces a level by name.
+#![allow(unsafe_code)]
 
+#[cfg(target_arch = "x86_64")]
+mod avx2;
 mod scalar;
 
 use std::ops::Range;
@@ -107,6 +110,8 @@ struct Block {
     end: usize,
     /// Where the first yielded row goes in the job's output.
     out: usize,
+    /// Whether no block comes after it, so that nobody needs its suffix.
+    is_last: bool,
 }
 
 impl Job {
@@ -132,6 +137,7 @@ impl Job {
                     .saturating_sub(top)
                     .min(size),
                 out: top.saturating_sub(self.span.after).saturating_sub(start),
+                is_last: top + size >= self.height_px + self.span.after,
             }
         })
     }
@@ -168,21 +174,31 @@ pub struct Level(Kind);
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 enum Kind {
     Scalar,
+    #[cfg(target_arch = "x86_64")]
+    Avx2,
 }
 
 impl Kind {
     /// From the plainest to the fastest.
-    const ALL: &[Self] = &[Self::Scalar];
+    const ALL: &[Self] = &[
+        Self::Scalar,
+        #[cfg(target_arch = "x86_64")]
+        Self::Avx2,
+    ];
 
     fn name(self) -> &'static str {
         match self {
             Self::Scalar => "scalar",
+            #[cfg(target_arch = "x86_64")]
+            Self::Avx2 => "avx2",
         }
     }
 
     fn is_here(self) -> bool {
         match self {
             Self::Scalar => true,
+            #[cfg(target_arch = "x86_64")]
+            Self::Avx2 => is_x86_feature_detected!("avx2"),
         }
     }
 }
@@ -192,6 +208,9 @@ macro_rules! dispatch {
     ($level:expr, $name:ident($($argument:expr),*)) => {
         match $level.0 {
             Kind::Scalar => scalar::$name($($argument),*),
+            #[cfg(target_arch = "x86_64")]
+            // SAFETY: a `Level` is only made for a kind whose instructions the CPU was seen to have.
+            Kind::Avx2 => unsafe { avx2::$name($($argument),*) },
         }
     };
 }
@@ -255,8 +274,9 @@ impl Level {
     ///
     /// `src` begins at the picture's first row, `dst` at the first row that comes out. With `suffix[o]` the extremum of
     /// rows `o..` of the *previous* block, row `o` of a block ends the window whose extremum is that of `suffix[o + 1]` and
-    /// of rows `0..=o` of this block. Afterwards `suffix` holds the last block's. `suffix` has one row more than the window,
-    /// for the kernel's own use. Rows outside the picture are ignored.
+    /// of rows `0..=o` of this block. Afterwards `suffix` holds that of the last block, arranged as the kernel likes, unless
+    /// it was the picture's last. At first it holds neutral values only. It has one row more than the window, for the
+    /// kernel's own use, and rows of [`suffix_stride`] bytes. Rows outside the picture are ignored.
     pub(crate) fn slide(self, op: Extremum, job: Job, src: Rows, dst: RowsMut, suffix: RowsMut) {
         dispatch!(self, slide(op, job, src, dst, suffix));
     }
@@ -286,6 +306,11 @@ impl Level {
     pub(crate) fn count(self, row: &[u8], counts: &mut Counts) {
         scalar::count(row, counts);
     }
+}
+
+/// The length of a row of the suffix buffer for pictures of this width: whole vectors of every level.
+pub(crate) fn suffix_stride(width_px: usize) -> usize {
+    width_px.next_multiple_of(64)
 }
 
 fn names() -> String {
