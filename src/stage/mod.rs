@@ -42,8 +42,13 @@ mod scene;
 
 mod kernels;
 
+mod buffer;
 mod element;
+
 mod slide;
+
+mod across;
+mod diagonals;
 mod tophat;
 
 mod morphology;

@@ -1,10 +1,10 @@
 //! Erosion and dilation on their own, for checks and for work off the line: they allocate.
 
+use super::diagonals::Diagonals;
 use super::element::{Segments, Span};
 use super::kernels::{Extremum, Level, Rows, RowsMut};
 use super::plan::Element;
 use super::slide::Slide;
-use super::tophat::Diagonals;
 use crate::frames::Gray;
 
 /// The smallest value under the element around every pixel (Serra 1982); what lies outside the picture is ignored.

@@ -6,6 +6,7 @@
 
 use std::arch::x86_64::*;
 
+use super::view::{View, ViewMut};
 use super::{Block, Extremum, Job, Rows, RowsMut, scalar};
 
 /// Bytes of a vector.
@@ -51,7 +52,7 @@ pub(super) fn slide(op: Extremum, job: Job, src: Rows, dst: RowsMut, suffix: Row
 fn slide_by<const MAX: bool>(job: Job, src: Rows, mut dst: RowsMut, suffix: RowsMut) {
     let width = job.width_px;
     for block in job.blocks() {
-        let src = src.from(block.top);
+        let src = src.from(block.src);
         let mut dst = dst.from(block.out);
         let mut rest = &mut *suffix.pixels;
         let mut x = 0;
@@ -121,38 +122,33 @@ fn tile<const MAX: bool, const WIDTH: usize>(
     suffix: &mut [u8],
 ) {
     let (suffix, _) = suffix.as_chunks_mut::<WIDTH>();
-    let row = |o: usize| -> &[u8; WIDTH] {
-        src.pixels[o * src.stride_px + x..]
-            .first_chunk()
-            .expect("the row is inside")
-    };
-    let mut out = |o: usize, values: &Values| {
-        let at = (o - block.skip) * dst.stride_px + x;
-        put::<WIDTH>(
-            dst.pixels[at..]
-                .first_chunk_mut()
-                .expect("the row is inside"),
-            values,
-        );
-    };
+    let suffix = &mut suffix[..block.size];
+    let src = View::<WIDTH>::new(src, x, block.rows_in);
+    let mut dst = ViewMut::<WIDTH>::new(dst, x, block.end - block.skip);
     let mut prefix = neutral::<MAX>();
     let (inside, joined) = (block.rows_in, block.end.min(block.size - 1));
     for o in 0..block.skip.min(inside) {
-        prefix = join::<MAX, WIDTH>(&prefix, row(o));
+        prefix = join::<MAX, WIDTH>(&prefix, src.row(o));
     }
     for o in block.skip..joined.min(inside) {
-        prefix = join::<MAX, WIDTH>(&prefix, row(o));
-        out(o, &join::<MAX, WIDTH>(&prefix, &suffix[o + 1]));
+        prefix = join::<MAX, WIDTH>(&prefix, src.row(o));
+        put(
+            dst.row(o - block.skip),
+            &join::<MAX, WIDTH>(&prefix, &suffix[o + 1]),
+        );
     }
     for o in block.skip.max(inside)..joined {
-        out(o, &join::<MAX, WIDTH>(&prefix, &suffix[o + 1]));
+        put(
+            dst.row(o - block.skip),
+            &join::<MAX, WIDTH>(&prefix, &suffix[o + 1]),
+        );
     }
     if block.end == block.size {
         let last = block.size - 1;
         if last < inside {
-            prefix = join::<MAX, WIDTH>(&prefix, row(last));
+            prefix = join::<MAX, WIDTH>(&prefix, src.row(last));
         }
-        out(last, &prefix);
+        put(dst.row(last - block.skip), &prefix);
     }
     if block.is_last {
         return;
@@ -162,7 +158,7 @@ fn tile<const MAX: bool, const WIDTH: usize>(
         .iter_mut()
         .for_each(|row| put(row, &backward));
     for o in (0..inside).rev() {
-        backward = join::<MAX, WIDTH>(&backward, row(o));
+        backward = join::<MAX, WIDTH>(&backward, src.row(o));
         put(&mut suffix[o], &backward);
     }
 }
@@ -195,11 +191,10 @@ pub(super) fn turn(width: usize, height: usize, src: Rows, mut dst: RowsMut) {
 #[inline]
 #[target_feature(enable = "avx2")]
 fn turn_piece(x: usize, y: usize, src: Rows, dst: &mut RowsMut) {
-    let mut v = [_mm256_setzero_si256(); 16];
-    for (i, v) in v.iter_mut().enumerate() {
-        let row = &src.pixels[(y + i) * src.stride_px + x..];
-        *v = load(row.first_chunk().expect("the row is inside"));
-    }
+    let src = View::new(src, y * src.stride_px + x, 16);
+    let start = x * dst.stride_px + y;
+    let mut dst = ViewMut::new(dst, start, 32);
+    let mut v: [__m256i; 16] = std::array::from_fn(|i| load(src.row(i)));
     for _ in 0..4 {
         let before = v;
         for i in 0..8 {
@@ -208,12 +203,8 @@ fn turn_piece(x: usize, y: usize, src: Rows, dst: &mut RowsMut) {
         }
     }
     for (i, &v) in v.iter().enumerate() {
-        let mut put = |column: usize, half| {
-            let row = &mut dst.pixels[(x + column) * dst.stride_px + y..];
-            store_half(row.first_chunk_mut().expect("the column is inside"), half);
-        };
-        put(i, _mm256_castsi256_si128(v));
-        put(i + 16, _mm256_extracti128_si256::<1>(v));
+        store_half(dst.row(i), _mm256_castsi256_si128(v));
+        store_half(dst.row(i + 16), _mm256_extracti128_si256::<1>(v));
     }
 }
 
@@ -270,4 +261,9 @@ fn above(low: __m256i, high: __m256i, level: u8) -> u64 {
         _mm256_movemask_epi8(equal) as u32
     };
     !(u64::from(not_above(low)) | u64::from(not_above(high)) << 32)
+}
+
+#[cfg(test)]
+mod tests {
+    crate::stage::kernels::tests::stamp!("avx2");
 }

@@ -7,6 +7,9 @@
 #[cfg(target_arch = "x86_64")]
 mod avx2;
 mod scalar;
+#[cfg(test)]
+mod tests;
+mod view;
 
 use std::ops::Range;
 
@@ -87,6 +90,8 @@ pub(crate) struct Job {
     pub height_px: usize,
     /// The window.
     pub span: Span,
+    /// The picture's row with which the source begins.
+    pub src_top: usize,
     /// The first block.
     pub first: usize,
     /// How many blocks.
@@ -100,8 +105,8 @@ struct Block {
     width_px: usize,
     /// Rows of a whole block.
     size: usize,
-    /// Its first row in the picture.
-    top: usize,
+    /// Its first row in the source.
+    src: usize,
     /// Its rows inside the picture.
     rows_in: usize,
     /// Its first rows whose windows are centred above the picture and which yield nothing.
@@ -130,7 +135,7 @@ impl Job {
             Block {
                 width_px: self.width_px,
                 size,
-                top,
+                src: top - self.src_top,
                 rows_in: self.height_px.saturating_sub(top).min(size),
                 skip: self.span.after.saturating_sub(top).min(size),
                 end: (self.height_px + self.span.after)
@@ -272,7 +277,7 @@ impl Level {
     /// Some blocks of the running extremum down the columns after van Herk 1992 and Gil & Werman 1993: three comparisons
     /// a pixel whatever the window's length.
     ///
-    /// `src` begins at the picture's first row, `dst` at the first row that comes out. With `suffix[o]` the extremum of
+    /// `src` begins with row `src_top`, `dst` at the first row that comes out. With `suffix[o]` the extremum of
     /// rows `o..` of the *previous* block, row `o` of a block ends the window whose extremum is that of `suffix[o + 1]` and
     /// of rows `0..=o` of this block. Afterwards `suffix` holds that of the last block, arranged as the kernel likes, unless
     /// it was the picture's last. At first it holds neutral values only. It has one row more than the window, for the
