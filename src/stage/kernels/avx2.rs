@@ -33,134 +33,15 @@ fn store_half(bytes: &mut [u8; 16], vector: __m128i) {
     unsafe { _mm_storeu_si128(bytes.as_mut_ptr().cast(), vector) }
 }
 
-/// See [`super::Level::slide`].
-///
-/// Columns are taken in tiles of up to 128 bytes, whose running values stay in registers. Every tile has its own part of
-/// the suffix buffer, row after row; so the last tile may overlap the one before.
-#[target_feature(enable = "avx2")]
-pub(super) fn slide(op: Extremum, job: Job, src: Rows, dst: RowsMut, suffix: RowsMut) {
-    if job.width_px < LANE {
-        return scalar::slide(op, job, src, dst, suffix);
-    }
-    match op {
-        Extremum::Least => slide_by::<false>(job, src, dst, suffix),
-        Extremum::Greatest => slide_by::<true>(job, src, dst, suffix),
-    }
-}
-
-#[target_feature(enable = "avx2")]
-fn slide_by<const MAX: bool>(job: Job, src: Rows, mut dst: RowsMut, suffix: RowsMut) {
-    let width = job.width_px;
-    for block in job.blocks() {
-        let src = src.from(block.src);
-        let mut dst = dst.from(block.out);
-        let mut rest = &mut *suffix.pixels;
-        let mut x = 0;
-        while x < width {
-            let left = width - x;
-            let step = match left {
-                128.. => 128,
-                64.. => 64,
-                _ => LANE,
-            };
-            let own = rest
-                .split_off_mut(..step * block.size)
-                .expect("the suffix has room for every tile");
-            let column = x.min(width - step);
-            match step {
-                128 => tile::<MAX, 128>(&block, column, src, &mut dst, own),
-                64 => tile::<MAX, 64>(&block, column, src, &mut dst, own),
-                _ => tile::<MAX, LANE>(&block, column, src, &mut dst, own),
-            }
-            x += step;
-        }
-    }
-}
-
-/// The running values of a tile's columns; tiles narrower than four vectors leave some unused.
-type Values = [__m256i; 4];
-
-#[inline]
-#[target_feature(enable = "avx2")]
-fn neutral<const MAX: bool>() -> Values {
-    [if MAX {
-        _mm256_setzero_si256()
-    } else {
-        _mm256_set1_epi8(-1)
-    }; 4]
-}
-
-#[inline]
-#[target_feature(enable = "avx2")]
-fn join<const MAX: bool, const WIDTH: usize>(values: &Values, row: &[u8; WIDTH]) -> Values {
-    let mut joined = *values;
-    for (value, bytes) in joined.iter_mut().zip(row.as_chunks().0) {
-        *value = match MAX {
-            true => _mm256_max_epu8(*value, load(bytes)),
-            false => _mm256_min_epu8(*value, load(bytes)),
-        };
-    }
-    joined
-}
-
-#[inline]
-#[target_feature(enable = "avx2")]
-fn put<const WIDTH: usize>(row: &mut [u8; WIDTH], values: &Values) {
-    for (bytes, &value) in row.as_chunks_mut().0.iter_mut().zip(values) {
-        store(bytes, value);
-    }
-}
-
-/// One block of `WIDTH` columns from `x` on.
-#[inline]
-#[target_feature(enable = "avx2")]
-fn tile<const MAX: bool, const WIDTH: usize>(
-    block: &Block,
-    x: usize,
-    src: Rows,
-    dst: &mut RowsMut,
-    suffix: &mut [u8],
-) {
-    let (suffix, _) = suffix.as_chunks_mut::<WIDTH>();
-    let suffix = &mut suffix[..block.size];
-    let src = View::<WIDTH>::new(src, x, block.rows_in);
-    let mut dst = ViewMut::<WIDTH>::new(dst, x, block.end - block.skip);
-    let mut prefix = neutral::<MAX>();
-    let (inside, joined) = (block.rows_in, block.end.min(block.size - 1));
-    for o in 0..block.skip.min(inside) {
-        prefix = join::<MAX, WIDTH>(&prefix, src.row(o));
-    }
-    for o in block.skip..joined.min(inside) {
-        prefix = join::<MAX, WIDTH>(&prefix, src.row(o));
-        put(
-            dst.row(o - block.skip),
-            &join::<MAX, WIDTH>(&prefix, &suffix[o + 1]),
-        );
-    }
-    for o in block.skip.max(inside)..joined {
-        put(
-            dst.row(o - block.skip),
-            &join::<MAX, WIDTH>(&prefix, &suffix[o + 1]),
-        );
-    }
-    if block.end == block.size {
-        let last = block.size - 1;
-        if last < inside {
-            prefix = join::<MAX, WIDTH>(&prefix, src.row(last));
-        }
-        put(dst.row(last - block.skip), &prefix);
-    }
-    if block.is_last {
-        return;
-    }
-    let mut backward = neutral::<MAX>();
-    suffix[inside..]
-        .iter_mut()
-        .for_each(|row| put(row, &backward));
-    for o in (0..inside).rev() {
-        backward = join::<MAX, WIDTH>(&backward, src.row(o));
-        put(&mut suffix[o], &backward);
-    }
+super::wide::slide! {
+    feature: "avx2",
+    vector: __m256i,
+    lane: 32,
+    zero: _mm256_setzero_si256(),
+    ones: _mm256_set1_epi8(-1),
+    least: _mm256_min_epu8,
+    greatest: _mm256_max_epu8,
+    narrower: scalar::slide,
 }
 
 /// Columns and rows of a piece that is turned in registers.
@@ -173,16 +54,20 @@ pub(super) fn turn(width: usize, height: usize, src: Rows, mut dst: RowsMut) {
         return scalar::turn(width, height, src, dst);
     }
     // The last piece either way may overlap the one before: it writes the same bytes again.
-    let columns = || (0..width).step_by(PIECE.0).map(|x| x.min(width - PIECE.0));
-    let rows = || {
-        (0..height)
-            .step_by(PIECE.1)
-            .map(|y| y.min(height - PIECE.1))
-    };
-    if width > height {
-        columns().for_each(|x| rows().for_each(|y| turn_piece(x, y, src, &mut dst)));
-    } else {
-        rows().for_each(|y| columns().for_each(|x| turn_piece(x, y, src, &mut dst)));
+    let (columns, rows) = (width.div_ceil(PIECE.0), height.div_ceil(PIECE.1));
+    for i in 0..columns * rows {
+        // Along the longer side last, so that what is written stays near what was written before.
+        let (column, row) = match width > height {
+            true => (i / rows, i % rows),
+            false => (i % columns, i / columns),
+        };
+        let (x, y) = (PIECE.0 * column, PIECE.1 * row);
+        turn_piece(
+            x.min(width - PIECE.0),
+            y.min(height - PIECE.1),
+            src,
+            &mut dst,
+        );
     }
 }
 
@@ -193,19 +78,54 @@ pub(super) fn turn(width: usize, height: usize, src: Rows, mut dst: RowsMut) {
 fn turn_piece(x: usize, y: usize, src: Rows, dst: &mut RowsMut) {
     let src = View::new(src, y * src.stride_px + x, 16);
     let start = x * dst.stride_px + y;
-    let mut dst = ViewMut::new(dst, start, 32);
-    let mut v: [__m256i; 16] = std::array::from_fn(|i| load(src.row(i)));
-    for _ in 0..4 {
-        let before = v;
-        for i in 0..8 {
-            v[2 * i] = _mm256_unpacklo_epi8(before[i], before[i + 8]);
-            v[2 * i + 1] = _mm256_unpackhi_epi8(before[i], before[i + 8]);
-        }
-    }
+    let mut dst = ViewMut::new(dst.from(0), start, 32);
+    let v = [
+        load(src.row(0)),
+        load(src.row(1)),
+        load(src.row(2)),
+        load(src.row(3)),
+        load(src.row(4)),
+        load(src.row(5)),
+        load(src.row(6)),
+        load(src.row(7)),
+        load(src.row(8)),
+        load(src.row(9)),
+        load(src.row(10)),
+        load(src.row(11)),
+        load(src.row(12)),
+        load(src.row(13)),
+        load(src.row(14)),
+        load(src.row(15)),
+    ];
+    let v = interleave(interleave(interleave(interleave(v))));
     for (i, &v) in v.iter().enumerate() {
         store_half(dst.row(i), _mm256_castsi256_si128(v));
         store_half(dst.row(i + 16), _mm256_extracti128_si256::<1>(v));
     }
+}
+
+#[inline]
+#[target_feature(enable = "avx2")]
+fn interleave(v: [__m256i; 16]) -> [__m256i; 16] {
+    // Written out, because arrays that are indexed in a loop end up in memory.
+    [
+        _mm256_unpacklo_epi8(v[0], v[8]),
+        _mm256_unpackhi_epi8(v[0], v[8]),
+        _mm256_unpacklo_epi8(v[1], v[9]),
+        _mm256_unpackhi_epi8(v[1], v[9]),
+        _mm256_unpacklo_epi8(v[2], v[10]),
+        _mm256_unpackhi_epi8(v[2], v[10]),
+        _mm256_unpacklo_epi8(v[3], v[11]),
+        _mm256_unpackhi_epi8(v[3], v[11]),
+        _mm256_unpacklo_epi8(v[4], v[12]),
+        _mm256_unpackhi_epi8(v[4], v[12]),
+        _mm256_unpacklo_epi8(v[5], v[13]),
+        _mm256_unpackhi_epi8(v[5], v[13]),
+        _mm256_unpacklo_epi8(v[6], v[14]),
+        _mm256_unpackhi_epi8(v[6], v[14]),
+        _mm256_unpacklo_epi8(v[7], v[15]),
+        _mm256_unpackhi_epi8(v[7], v[15]),
+    ]
 }
 
 /// See [`super::Level::subtract`].

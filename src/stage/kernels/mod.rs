@@ -6,10 +6,14 @@
 
 #[cfg(target_arch = "x86_64")]
 mod avx2;
+#[cfg(target_arch = "x86_64")]
+mod avx512;
 mod scalar;
 #[cfg(test)]
 mod tests;
 mod view;
+#[cfg(target_arch = "x86_64")]
+mod wide;
 
 use std::ops::Range;
 
@@ -19,6 +23,10 @@ use super::element::Span;
 
 /// The environment variable that forces a level.
 const FORCE: &str = "BELTWRIGHT_KERNELS";
+
+/// Bytes of the nearest data cache that a kernel may count on.
+#[cfg(target_arch = "x86_64")]
+const NEAREST_CACHE: usize = 40 * 1024;
 
 /// Which of two values wins.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -181,6 +189,8 @@ enum Kind {
     Scalar,
     #[cfg(target_arch = "x86_64")]
     Avx2,
+    #[cfg(target_arch = "x86_64")]
+    Avx512,
 }
 
 impl Kind {
@@ -189,6 +199,8 @@ impl Kind {
         Self::Scalar,
         #[cfg(target_arch = "x86_64")]
         Self::Avx2,
+        #[cfg(target_arch = "x86_64")]
+        Self::Avx512,
     ];
 
     fn name(self) -> &'static str {
@@ -196,6 +208,8 @@ impl Kind {
             Self::Scalar => "scalar",
             #[cfg(target_arch = "x86_64")]
             Self::Avx2 => "avx2",
+            #[cfg(target_arch = "x86_64")]
+            Self::Avx512 => "avx512",
         }
     }
 
@@ -204,6 +218,12 @@ impl Kind {
             Self::Scalar => true,
             #[cfg(target_arch = "x86_64")]
             Self::Avx2 => is_x86_feature_detected!("avx2"),
+            #[cfg(target_arch = "x86_64")]
+            Self::Avx512 => {
+                is_x86_feature_detected!("avx2")
+                    && is_x86_feature_detected!("avx512f")
+                    && is_x86_feature_detected!("avx512bw")
+            }
         }
     }
 }
@@ -216,6 +236,9 @@ macro_rules! dispatch {
             #[cfg(target_arch = "x86_64")]
             // SAFETY: a `Level` is only made for a kind whose instructions the CPU was seen to have.
             Kind::Avx2 => unsafe { avx2::$name($($argument),*) },
+            #[cfg(target_arch = "x86_64")]
+            // SAFETY: as above.
+            Kind::Avx512 => unsafe { avx512::$name($($argument),*) },
         }
     };
 }

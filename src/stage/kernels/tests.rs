@@ -5,7 +5,10 @@ use super::{Block, Counts, Extremum, Job, Level, Rows, RowsMut, suffix_stride};
 use crate::stage::element::Span;
 
 /// The widest tile of any level, in bytes.
-const TILE: usize = 128;
+const TILE: usize = 256;
+
+/// Widths up to this are tested.
+const WIDEST: usize = 2 * TILE + 1;
 
 /// Bytes before and after everything that is written.
 const GUARD: usize = 96;
@@ -192,18 +195,16 @@ fn extremum(op: Extremum, source: &Source, height: usize, span: Span, x: usize, 
 }
 
 pub(super) fn slide(level: Level) {
-    for width in 0..=2 * TILE + 1 {
+    for width in 0..=WIDEST {
         for (i, (before, after)) in [(0, 0), (1, 0), (0, 1), (2, 1), (3, 5), (8, 8)]
             .into_iter()
             .enumerate()
         {
-            let span = Span { before, after };
             let height = [9, 1, 20, 2, 33, 17][(i + width) % 6];
             // The slides of the stage never reach further than the picture.
             let span = Span {
                 before: before.min(height - 1),
                 after: after.min(height - 1),
-                ..span
             };
             let source = Source::new(width, height, 7 * width + i);
             for op in [Extremum::Least, Extremum::Greatest] {
@@ -274,7 +275,7 @@ pub(super) fn slide_in_steps(level: Level) {
 }
 
 pub(super) fn turn(level: Level) {
-    let small = 0..=2 * TILE + 1;
+    let small = 0..=WIDEST;
     let sizes = small.flat_map(|a| [0, 1, 15, 16, 17, 31, 33, 63, 64, 65, 129].map(|b| (a, b)));
     for (i, (a, b)) in sizes.enumerate() {
         for (width, height) in [(a, b), (b, a)] {
@@ -287,7 +288,7 @@ pub(super) fn turn(level: Level) {
 }
 
 pub(super) fn subtract(level: Level) {
-    for width in 0..=2 * TILE + 1 {
+    for width in 0..=WIDEST {
         let (upper, lower) = (
             Source::new(width, 1, width),
             Source::new(width, 1, width + 1),
@@ -306,7 +307,7 @@ pub(super) fn subtract(level: Level) {
 }
 
 pub(super) fn mark(level: Level) {
-    for width in 0..=2 * TILE + 1 {
+    for width in 0..=WIDEST {
         let (upper, lower) = (
             Source::new(width, 1, width),
             Source::new(width, 1, width + 1),
@@ -334,7 +335,7 @@ fn check_bits(bits: &[u64], width: usize, expected: impl Fn(usize) -> bool) {
 }
 
 pub(super) fn count(level: Level) {
-    for width in 0..=2 * TILE + 1 {
+    for width in 0..=WIDEST {
         let source = Source::new(width, 1, width);
         let row = source.rows().row(0, width);
         let mut counts: Counts = [[0; 256]; 4];

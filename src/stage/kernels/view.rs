@@ -64,7 +64,7 @@ impl<'a, const WIDTH: usize> View<'a, WIDTH> {
 impl<'a, const WIDTH: usize> ViewMut<'a, WIDTH> {
     /// `count` rows, the first at byte `start` of `rows`.
     #[inline]
-    pub fn new(rows: &'a mut RowsMut, start: usize, count: usize) -> Self {
+    pub fn new(rows: RowsMut<'a>, start: usize, count: usize) -> Self {
         let mut first = rows.pixels.as_mut_ptr();
         if count > 0 {
             check(rows.pixels.len(), start, rows.stride_px, count, WIDTH);
