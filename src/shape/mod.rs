@@ -1,23 +1,36 @@
 //! The taught silhouette, where a part lies, and how far it is from the taught one.
 
+mod align;
+mod bitmap;
+mod distance;
+#[cfg(test)]
+mod drawn;
+mod edge;
+mod error;
+mod field;
+mod gauge;
+mod model;
+mod overlay;
+mod patches;
+mod pose;
+#[cfg(test)]
+mod pose_accuracy;
+mod raster;
+mod silhouette;
+mod symmetry;
 mod verdict;
 
+pub use bitmap::Bitmap;
+pub use distance::{DistanceTransform, NOWHERE};
+pub use error::ShapeError;
+pub use gauge::gauge_masks;
+pub use model::Model;
+pub use pose::Found;
+pub use silhouette::{MAX_SIDE_PX, Silhouette};
+pub use symmetry::Symmetry;
 pub use verdict::{Reason, Reasons, Verdict};
 
 use crate::stage::{Region, Run};
-
-/// A taught silhouette: for every pixel the share of good parts that cover it.
-#[derive(Clone, Debug, PartialEq)]
-pub struct Silhouette {
-    /// Columns.
-    pub width_px: usize,
-    /// Rows.
-    pub height_px: usize,
-    /// Edge length of a pixel on the belt.
-    pub mm_per_px: f64,
-    /// Row by row; 255 is covered by all good parts. The silhouette proper is value > 127 (the majority).
-    pub share: Vec<u8>,
-}
 
 /// Where a silhouette lies in the picture. Pixel (0, 0) has its centre at (0.0, 0.0).
 #[derive(Clone, Copy, Debug, Default, PartialEq)]

@@ -1,0 +1,89 @@
+//! A silhouette with everything derived from it that judging needs.
+
+use super::field::Field;
+use super::raster::{self, Cells, Placement};
+use super::symmetry::Symmetry;
+use super::{Bitmap, DistanceTransform, Pose, Silhouette};
+
+/// A silhouette made ready for judging.
+#[derive(Clone, Debug)]
+pub struct Model {
+    silhouette: Silhouette,
+    symmetry: Symmetry,
+    pub(super) centroid: (f64, f64),
+    pub(super) area_px: u64,
+    /// From the centroid to the farthest pixel centre of the majority.
+    pub(super) radius_px: f64,
+    /// Largest distance from a pixel of the majority to one that is not.
+    pub(super) depth_px: f64,
+    /// Pixel centres of the majority that are the first or last of their row, from the centroid.
+    pub(super) rim: Vec<(f64, f64)>,
+    pub(super) field: Field,
+    cells: Cells,
+}
+
+impl Model {
+    /// Derives everything from `silhouette`, whose majority must not be empty.
+    pub fn new(silhouette: Silhouette) -> Self {
+        let majority = silhouette.majority();
+        assert!(majority.count() > 0, "a silhouette needs a majority");
+        let centroid = silhouette.centroid();
+        let ends = (0..majority.height_px()).filter_map(|y| {
+            let first = majority.runs(y).next()?.0;
+            let last = majority.runs(y).last()?.1 - 1;
+            Some([first, last].map(|x| (x as f64 - centroid.0, y as f64 - centroid.1)))
+        });
+        let rim: Vec<_> = ends.flatten().collect();
+        let deepest = DistanceTransform::default().to_background(&majority).iter().max().copied();
+        let mut model = Self {
+            symmetry: Symmetry::NONE,
+            centroid,
+            area_px: majority.count(),
+            radius_px: rim.iter().map(|&(x, y)| x.hypot(y)).fold(0.0, f64::max),
+            depth_px: f64::from(deepest.unwrap_or(0)).sqrt(),
+            rim,
+            field: Field::new(&silhouette),
+            cells: Cells::new(&silhouette),
+            silhouette,
+        };
+        model.symmetry = Symmetry::of(&model);
+        model
+    }
+
+    /// What it was made from.
+    pub fn silhouette(&self) -> &Silhouette {
+        &self.silhouette
+    }
+
+    /// Which turns and mirrors cannot be told apart.
+    pub fn symmetry(&self) -> Symmetry {
+        self.symmetry
+    }
+
+    /// The pose at which the silhouette's pixels are the picture's.
+    pub fn identity(&self) -> Pose {
+        Pose {
+            x_px: self.centroid.0,
+            y_px: self.centroid.1,
+            ..Pose::default()
+        }
+    }
+
+    /// Puts every pixel that the silhouette covers at `pose` into `to`, whose pixel (0, 0) is the picture's pixel
+    /// `origin`. Covered is what has a share of more than 127 at its centre, interpolated bilinearly and rounded; at
+    /// whole-pixel shifts that is the majority itself.
+    pub fn draw(&self, pose: Pose, origin: (i32, i32), to: &mut Bitmap) {
+        let placement = Placement::new(pose, self.centroid);
+        raster::draw(&self.silhouette, &self.cells, &placement, origin, to);
+    }
+
+    /// The smallest and largest columns and rows that pixels of the silhouette at `pose` can have: `[left, top, right,
+    /// bottom]`, all inclusive.
+    pub(super) fn bounds(&self, pose: Pose) -> [i32; 4] {
+        // The interpolated edge lies less than a pixel beyond the outermost centres of the majority.
+        let reach = self.radius_px + 2.0;
+        let low = |at: f64| (at - reach).floor() as i32;
+        let high = |at: f64| (at + reach).ceil() as i32;
+        [low(pose.x_px), low(pose.y_px), high(pose.x_px), high(pose.y_px)]
+    }
+}
