@@ -69,14 +69,14 @@ impl<'a> Lookup<'a> {
     }
 }
 
-/// Mean Geman-McClure cost of the points, 0 (all on the edge) to 1 (all far off).
+/// Mean of the points' squared distances relative to that of `scale_px`, each counted as 1 at most: 0 if all points lie
+/// on the edge, 1 if all are far off.
 pub(super) fn cost(model: &Model, points: &[[f32; 2]], place: &Place, scale_px: f64) -> f64 {
     let lookup = Lookup::new(model, place);
-    let square = (scale_px * scale_px) as f32;
+    let per_square = (1.0 / (scale_px * scale_px)) as f32;
     let of = |&point: &[f32; 2]| {
         let distance = lookup.at(point).2.distance;
-        let distance_squared = distance * distance;
-        distance_squared / (distance_squared + square)
+        (distance * distance * per_square).min(1.0)
     };
     f64::from(points.iter().map(of).sum::<f32>()) / points.len().max(1) as f64
 }

@@ -108,6 +108,38 @@ impl Bitmap {
         self.words.extend(a.words.iter().zip(&b.words).map(|(a, b)| a & !b));
     }
 
+    /// Makes `to` the rectangle's pixels that are not in `set`, and returns it.
+    pub(super) fn complement<'a>(set: &Self, to: &'a mut Self) -> &'a Self {
+        to.reset(set.width_px, set.height_px);
+        for y in 0..set.height_px {
+            let mut end = 0;
+            for (x0, x1) in set.runs(y) {
+                to.insert_run(y, end, x0);
+                end = x1;
+            }
+            to.insert_run(y, end, set.width_px);
+        }
+        to
+    }
+
+    /// How many pixels are in the set with all their eight neighbours: the set eroded by 3x3.
+    pub(super) fn count_eroded(&self) -> u64 {
+        let words = self.width_px.div_ceil(64);
+        let across = |y: usize, word: usize| {
+            let row = self.row(y);
+            let before = if word > 0 { row[word - 1] >> 63 } else { 0 };
+            let after = if word + 1 < words { row[word + 1] << 63 } else { 0 };
+            row[word] & (row[word] << 1 | before) & (row[word] >> 1 | after)
+        };
+        let inner = |y: usize| {
+            let eroded = (0..words).map(move |word| {
+                across(y - 1, word) & across(y, word) & across(y + 1, word)
+            });
+            eroded.map(|word| u64::from(word.count_ones())).sum::<u64>()
+        };
+        (1..self.height_px.saturating_sub(1)).map(inner).sum()
+    }
+
     /// The runs of row `y` from left to right, as `(x0, x1)` with `x1` one past the last column.
     pub fn runs(&self, y: usize) -> Runs<'_> {
         Runs {

@@ -8,6 +8,7 @@ use super::{Bitmap, Pose, Silhouette};
 #[derive(Clone, Debug)]
 pub(crate) struct Outline {
     rings: Vec<Vec<(f64, f64)>>,
+    reach: f64,
 }
 
 /// A flaw in the outline's own coordinates.
@@ -22,22 +23,24 @@ pub(crate) enum Flaw {
 }
 
 impl Outline {
+    fn new(rings: Vec<Vec<(f64, f64)>>) -> Self {
+        let corners = rings.iter().flatten();
+        let reach = corners.map(|&(x, y)| x.hypot(y)).fold(0.0, f64::max);
+        Self { rings, reach }
+    }
+
     fn round(x: f64, y: f64, radius: f64) -> Vec<(f64, f64)> {
-        let corner = |i| TAU * f64::from(i) / 360.0;
-        let corners = (0..360).map(corner);
+        let corner = |i| TAU * f64::from(i) / 180.0;
+        let corners = (0..180).map(corner);
         corners.map(|a: f64| (x + radius * a.cos(), y + radius * a.sin())).collect()
     }
 
     pub(crate) fn disc(radius: f64) -> Self {
-        Self {
-            rings: vec![Self::round(0.0, 0.0, radius)],
-        }
+        Self::new(vec![Self::round(0.0, 0.0, radius)])
     }
 
     pub(crate) fn polygon(corners: &[(f64, f64)]) -> Self {
-        Self {
-            rings: vec![corners.to_vec()],
-        }
+        Self::new(vec![corners.to_vec()])
     }
 
     /// Five points; the inner corners lie at half the radius.
@@ -47,9 +50,7 @@ impl Outline {
             let radius = if i.is_multiple_of(2) { radius } else { 0.5 * radius };
             (radius * cos, radius * sin)
         };
-        Self {
-            rings: vec![(0..10).map(corner).collect()],
-        }
+        Self::new(vec![(0..10).map(corner).collect()])
     }
 
     /// A ring with a tab that sits beside its middle line, so that it has a face.
@@ -63,9 +64,7 @@ impl Outline {
         let at = outer.iter().position(|&p| angle(p) > 0.40 && angle(p) < 0.5).unwrap();
         let tab = tab.map(|(x, y)| (x * radius, y * radius));
         outer.splice(at..at, tab[..3].iter().copied());
-        Self {
-            rings: vec![outer, Self::round(0.0, 0.0, 0.55 * radius)],
-        }
+        Self::new(vec![outer, Self::round(0.0, 0.0, 0.55 * radius)])
     }
 
     pub(crate) fn has(&self, x: f64, y: f64) -> bool {
@@ -90,11 +89,6 @@ impl Outline {
         })
     }
 
-    fn reach(&self) -> f64 {
-        let corners = self.rings.iter().flatten();
-        corners.map(|&(x, y)| x.hypot(y)).fold(0.0, f64::max)
-    }
-
     /// The outline with its (0, 0) at the pose, in a picture of this size.
     pub(crate) fn draw(&self, pose: Pose, flaws: &[Flaw], size: (usize, usize)) -> Bitmap {
         let mut picture = Bitmap::new(size.0, size.1);
@@ -107,6 +101,10 @@ impl Outline {
         for y in 0..picture.height_px() {
             for x in 0..picture.width_px() {
                 let (dx, dy) = (x as f64 - pose.x_px, y as f64 - pose.y_px);
+                // Beyond the farthest corner there are at most burrs.
+                if dx.hypot(dy) > 1.3 * self.reach {
+                    continue;
+                }
                 let (u, v) = (cos * dx + sin * dy, cos * dy - sin * dx);
                 if self.has_with(if pose.flipped { -u } else { u }, v, flaws) {
                     picture.insert(x, y);
@@ -118,7 +116,7 @@ impl Outline {
 
 /// The outline as it would be taught from very many parts, and where its (0, 0) lies in it.
 pub(crate) fn silhouette(outline: &Outline, mm_per_px: f64) -> (Silhouette, (f64, f64)) {
-    let half = outline.reach().ceil() as usize + 3;
+    let half = outline.reach.ceil() as usize + 3;
     let side = 2 * half + 1;
     let share = |i: usize| {
         let (x, y) = ((i % side) as f64 - half as f64, (i / side) as f64 - half as f64);

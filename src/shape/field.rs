@@ -15,6 +15,7 @@ pub(super) struct Field {
     /// Between four neighbouring pixel centres: the value at the upper left one, how it changes towards x and y, and by
     /// how much that towards x changes towards y. Row by row, one column and row fewer than pixels.
     cells: Vec<[f32; 4]>,
+    edge_px: f64,
 }
 
 /// A looked-up distance and how it changes towards x and y.
@@ -44,7 +45,13 @@ impl Field {
             height,
             margin: margin as f32,
             cells: (0..width * height).map(cell).collect(),
+            edge_px: grid.edge_px,
         }
+    }
+
+    /// How long the edge is, bores included.
+    pub(super) fn edge_px(&self) -> f64 {
+        self.edge_px
     }
 
     /// The distance at a place in the silhouette's picture. Beyond the margin it is that of the nearest place within.
@@ -73,6 +80,7 @@ struct Grid {
     height: usize,
     margin: f64,
     values: Vec<f32>,
+    edge_px: f64,
 }
 
 impl Grid {
@@ -89,6 +97,7 @@ impl Grid {
             height,
             margin: margin as f64,
             values: (0..width * height).map(|i| value(i % width, i / width)).collect(),
+            edge_px: 0.0,
         };
         grid.sharpen(silhouette);
         grid
@@ -100,6 +109,7 @@ impl Grid {
         let (columns, rows) = (silhouette.width_px as i32, silhouette.height_px as i32);
         for (column, row) in (-1..rows).flat_map(|row| (-1..columns).map(move |column| (column, row))) {
             for [a, b] in pieces(silhouette, f64::from(column), f64::from(row)).into_iter().flatten() {
+                self.edge_px += (b.0 - a.0).hypot(b.1 - a.1);
                 self.offer(a, b, &mut nearest);
             }
         }

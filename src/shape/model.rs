@@ -18,6 +18,8 @@ pub struct Model {
     pub(super) depth_px: f64,
     /// Pixel centres of the majority that are the first or last of their row, from the centroid.
     pub(super) rim: Vec<(f64, f64)>,
+    /// How far edges of good parts are from the silhouette's, as a standard deviation.
+    spread_px: f64,
     pub(super) field: Field,
     cells: Cells,
 }
@@ -35,6 +37,7 @@ impl Model {
         });
         let rim: Vec<_> = ends.flatten().collect();
         let deepest = DistanceTransform::default().to_background(&majority).iter().max().copied();
+        let field = Field::new(&silhouette);
         let mut model = Self {
             symmetry: Symmetry::NONE,
             centroid,
@@ -42,7 +45,8 @@ impl Model {
             radius_px: rim.iter().map(|&(x, y)| x.hypot(y)).fold(0.0, f64::max),
             depth_px: f64::from(deepest.unwrap_or(0)).sqrt(),
             rim,
-            field: Field::new(&silhouette),
+            spread_px: spread_px(&silhouette, &field),
+            field,
             cells: Cells::new(&silhouette),
             silhouette,
         };
@@ -69,6 +73,12 @@ impl Model {
         }
     }
 
+    /// The cost (see [`super::align::cost`]) up to which a pose is that of a part without flaws. Parts differ by as much as
+    /// the share is soft along the edge.
+    pub(super) fn good_cost(&self, scale_px: f64) -> f64 {
+        0.03 + 2.0 * (self.spread_px / scale_px).powi(2)
+    }
+
     /// Puts every pixel that the silhouette covers at `pose` into `to`, whose pixel (0, 0) is the picture's pixel
     /// `origin`. Covered is what has a share of more than 127 at its centre, interpolated bilinearly and rounded; at
     /// whole-pixel shifts that is the majority itself.
@@ -86,4 +96,12 @@ impl Model {
         let high = |at: f64| (at + reach).ceil() as i32;
         [low(pose.x_px), low(pose.y_px), high(pose.x_px), high(pose.y_px)]
     }
+}
+
+/// Across an edge that is normally distributed with standard deviation s, the integral of 4 p (1 - p) is 4 s / sqrt(pi).
+/// An edge that is sharp still differs by the 0.29 px that pixels cannot tell.
+fn spread_px(silhouette: &Silhouette, field: &Field) -> f64 {
+    let shares = silhouette.share.iter().map(|&share| f64::from(share) / 255.0);
+    let soft: f64 = shares.map(|p| 4.0 * p * (1.0 - p)).sum();
+    (soft / field.edge_px().max(1.0) * std::f64::consts::PI.sqrt() / 4.0).max(0.29)
 }

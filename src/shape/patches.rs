@@ -1,7 +1,16 @@
-//! Drops small patches: 8-connected components, found by joining runs of neighbouring rows (disjoint sets with path
+//! Patches: connected components, found by joining runs of neighbouring rows (disjoint sets with path
 //! halving, R. E. Tarjan and J. van Leeuwen, "Worst-case analysis of set union algorithms", JACM 31, 1984).
 
 use super::Bitmap;
+
+/// Which pixels hang together.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub(super) enum Joined {
+    /// By their sides.
+    Four,
+    /// By their sides and corners.
+    Eight,
+}
 
 /// The buffers for it.
 #[derive(Clone, Debug, Default)]
@@ -20,13 +29,19 @@ struct Node {
 }
 
 impl Patches {
-    /// Takes every patch of fewer than `below` pixels out of `set`.
+    /// How many patches there are.
+    pub(super) fn count(&mut self, set: &Bitmap, joined: Joined) -> usize {
+        self.label(set, joined);
+        (0..self.runs.len()).filter(|&i| self.runs[i].parent == i).count()
+    }
+
+    /// Takes every 8-connected patch of fewer than `below` pixels out of `set`.
     pub(super) fn drop_small(&mut self, set: &mut Bitmap, below: f64) {
         // One pixel is the smallest patch there is.
         if below <= 1.0 {
             return;
         }
-        self.label(set);
+        self.label(set, Joined::Eight);
         for i in 0..self.runs.len() {
             let Node { y, x0, x1, .. } = self.runs[i];
             let root = self.root(i);
@@ -36,7 +51,9 @@ impl Patches {
         }
     }
 
-    fn label(&mut self, set: &Bitmap) {
+    fn label(&mut self, set: &Bitmap, joined: Joined) {
+        // How many columns two runs of neighbouring rows must share; 0 lets corners touch.
+        let shared = if joined == Joined::Four { 1 } else { 0 };
         self.runs.clear();
         let mut above = 0..0;
         for y in 0..set.height_px() {
@@ -52,11 +69,11 @@ impl Patches {
                     size,
                 });
                 // Runs above that end before this one starts cannot touch later ones either.
-                while above.start < above.end && self.runs[above.start].x1 < x0 {
+                while above.start < above.end && self.runs[above.start].x1 < x0 + shared {
                     above.start += 1;
                 }
                 let mut i = above.start;
-                while i < above.end && self.runs[i].x0 <= x1 {
+                while i < above.end && self.runs[i].x0 + shared <= x1 {
                     self.join(i, parent);
                     i += 1;
                 }
@@ -86,7 +103,7 @@ impl Patches {
 
 #[cfg(test)]
 mod tests {
-    use super::super::bitmap::tests::any_bitmap;
+    use super::super::bitmap::tests::{any_bitmap, bitmap};
     use super::*;
     use proptest::prelude::*;
 
@@ -104,6 +121,15 @@ mod tests {
             }
         }
         found
+    }
+
+    /// Published in the docstring of scipy.ndimage.label.
+    #[test]
+    fn the_published_example_has_four_or_two() {
+        let set = bitmap(&["..##..", "...#..", "##..#.", "...#.."]);
+        let mut patches = Patches::default();
+        assert_eq!(patches.count(&set, Joined::Four), 4);
+        assert_eq!(patches.count(&set, Joined::Eight), 2);
     }
 
     proptest! {
