@@ -151,12 +151,13 @@ impl Sorter {
         let belt_mm = self.motion.position_mm(look.captured_us);
         self.views.clear();
         self.views.extend(look.views(belt_mm));
-        self.parts.take(&self.views);
         let seen = self.plan.seen_at_zero;
-        self.coverage.cover(Stretch {
+        let seen = Stretch {
             from_mm: seen.from_mm + belt_mm,
             to_mm: seen.to_mm + belt_mm,
-        });
+        };
+        self.parts.take(&self.views, seen.from_mm);
+        self.coverage.cover(seen);
         self.health.frames += 1;
         self.health.specks += u64::from(look.specks);
     }

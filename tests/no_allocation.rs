@@ -65,7 +65,7 @@ fn draw(frame: u32, pixels: &mut [u8]) {
             near(160 + shift, 130),
             near(250, 180 - shift),
         ];
-        let part = spots.iter().any(|&d| d < 900 && d >= 40);
+        let part = spots.iter().any(|d| (40..900).contains(d));
         *pixel = if part { 150 } else { 30 } + grain / 10;
     }
 }

@@ -215,3 +215,129 @@ fn notes(drawing: &Drawing, settings: &Settings) -> String {
         excess = limit(|shape| shape.excess_mm),
     )
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::recording::Recording;
+
+    fn settings() -> Settings {
+        toml::from_str(
+            r#"
+            camera = { width_px = 160, height_px = 120, mm_per_px = 1.0, frames_per_s = 8.0, exposure_ms = 0.4, latency_ms = 100.0 }
+            belt = { speed_mm_s = 400.0, speed_tolerance_percent = 1.0, travel = "right", part_pitch_mm = 50.0 }
+            picture = { parts = "dark", element_mm = 40.0, threshold = { method = "fixed", level = 30 }, fill_below_mm2 = 20.0, speck_below_mm2 = 40.0 }
+            judge = { flaw_below_mm2 = 1.0, fit_at_least = 0.6 }
+            shape = [{ name = "gasket", file = "gasket.toml", missing_mm = 1.5, excess_mm = 1.5 }]
+            outlet = [{ name = "flap", coil = 0, distance_mm = 300.0, margin_mm = 5.0, open_delay_ms = 1.0, close_delay_ms = 1.0, max_on_ms = 500.0 }]
+            reject = { outlet = "flap" }
+            line = { unit = 1, baud = 19200, answer_within_ms = 50.0 }
+            "#,
+        )
+        .unwrap()
+    }
+
+    fn args(folder: &Path) -> DrawArgs {
+        DrawArgs {
+            scene: Scene::Gaskets,
+            settings: PathBuf::new(),
+            parts: 30,
+            seed: 9,
+            first_us: 5_000_000,
+            out: Some(folder.join("drawn")),
+            mask: Some(folder.join("mask.png")),
+        }
+    }
+
+    #[test]
+    fn a_drawing_is_a_recording_with_labels_that_follow_from_the_truth() {
+        let folder = tempfile::tempdir().unwrap();
+        let args = args(folder.path());
+        draw(&args, &settings()).unwrap();
+        let out = args.out.unwrap();
+        let recording = Recording::open(&out, None).unwrap();
+        assert_eq!(recording.span_us().0, Micros(5_000_000));
+        let notes = recording.notes().unwrap().unwrap();
+        assert_eq!(notes["scene"].as_str(), Some("gaskets"));
+        assert_eq!(notes["camera"]["mm_per_px"].as_float(), Some(1.0));
+
+        let labels = recording.labels().unwrap().unwrap();
+        let mut table = csv::Reader::from_path(out.join("truth.csv")).unwrap();
+        assert_eq!(table.headers().unwrap(), TRUTH_HEADER.as_slice());
+        let rows: Vec<_> = table.records().map(Result::unwrap).collect();
+        // Two of the thirty touch and have one label.
+        assert_eq!((rows.len(), labels.len()), (30, 29));
+        for row in &rows {
+            let label = &labels[row[1].parse::<usize>().unwrap()];
+            assert_eq!(label.verdict.to_string(), row[10]);
+            assert_eq!(row[10] == *"reject", !row[11].is_empty());
+            let off_mm = (row[2].parse::<f64>().unwrap() - label.along_mm).abs();
+            assert!(off_mm < if row[6] == *"touching" { 25.0 } else { 1e-9 });
+        }
+        let mask = image::open(folder.path().join("mask.png")).unwrap();
+        assert_eq!(mask.color(), image::ColorType::L8);
+    }
+
+    #[test]
+    fn the_same_seed_gives_the_same_files() {
+        let folders = [tempfile::tempdir().unwrap(), tempfile::tempdir().unwrap()];
+        for folder in &folders {
+            draw(&args(folder.path()), &settings()).unwrap();
+        }
+        let names = |folder: &Path| {
+            let mut names: Vec<_> = std::fs::read_dir(folder)
+                .unwrap()
+                .map(|entry| entry.unwrap().file_name())
+                .collect();
+            names.sort();
+            names
+        };
+        let drawn = folders.each_ref().map(|folder| folder.path().join("drawn"));
+        assert_eq!(names(&drawn[0]), names(&drawn[1]));
+        for name in names(&drawn[0]) {
+            let bytes = drawn
+                .each_ref()
+                .map(|folder| std::fs::read(folder.join(&name)).unwrap());
+            assert!(bytes[0] == bytes[1], "{name:?}");
+        }
+    }
+
+    #[test]
+    fn nothing_is_overwritten_or_half_written() {
+        let folder = tempfile::tempdir().unwrap();
+        let mut args = args(folder.path());
+        args.parts = 0;
+        assert!(
+            draw(&args, &settings())
+                .unwrap_err()
+                .to_string()
+                .starts_with("0 parts")
+        );
+        assert_eq!(std::fs::read_dir(folder.path()).unwrap().count(), 0);
+
+        args.parts = 2;
+        std::fs::write(folder.path().join("mask.png"), "mine").unwrap();
+        assert!(draw(&args, &settings()).is_err());
+        assert!(!folder.path().join("drawn").exists());
+        args.mask = None;
+        draw(&args, &settings()).unwrap();
+        let again = draw(&args, &settings()).unwrap_err();
+        assert!(again.to_string().contains("not empty"), "{again}");
+    }
+
+    #[test]
+    fn something_must_be_asked_for() {
+        use clap::Parser;
+        #[derive(Debug, Parser)]
+        struct Line {
+            #[command(flatten)]
+            draw: DrawArgs,
+        }
+        let parse = |words: &str| Line::try_parse_from(format!("x {words}").split(' '));
+        assert!(parse("gaskets --settings s.toml").is_err());
+        assert!(parse("buttons --settings s.toml --out o").is_err());
+        assert!(parse("gaskets --settings s.toml --out o --first-us -1").is_err());
+        let line = parse("oat-stars --settings s.toml --mask m.png").unwrap();
+        assert_eq!((line.draw.scene, line.draw.parts), (Scene::OatStars, 30));
+    }
+}

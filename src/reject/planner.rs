@@ -96,7 +96,8 @@ impl Planner {
         self.tracks[outlet].add(now, motion, [lead_mm, trail_mm], &mut self.ledger);
     }
 
-    /// When to poll next; `None` while nothing is to come, or the belt stands.
+    /// When to poll next; `None` while nothing is to come, or the belt stands. The poll may find that the window has passed
+    /// and that there is nothing to switch.
     pub fn next_due(&self, motion: &Motion) -> Option<Micros> {
         match self.unread.front() {
             Some(switch) => Some(switch.due_us),

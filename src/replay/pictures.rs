@@ -4,11 +4,13 @@
 //! the outline is a thin line, missing areas are hatched one way, excess areas the other way, the worst point of either
 //! is a ring.
 
+use std::convert::Infallible;
+
 use embedded_graphics::mono_font::MonoTextStyle;
 use embedded_graphics::mono_font::ascii::FONT_9X15;
 use embedded_graphics::pixelcolor::Rgb888;
 use embedded_graphics::prelude::*;
-use embedded_graphics::primitives::{Circle, Line, PrimitiveStyle};
+use embedded_graphics::primitives::{Circle, Line, PrimitiveStyle, Rectangle};
 use embedded_graphics::text::{Baseline, Text};
 use image::{Rgb, RgbImage};
 
@@ -52,7 +54,7 @@ impl OriginDimensions for Canvas {
 
 impl DrawTarget for Canvas {
     type Color = Rgb888;
-    type Error = std::convert::Infallible;
+    type Error = Infallible;
 
     fn draw_iter<I>(&mut self, pixels: I) -> Result<(), Self::Error>
     where
@@ -70,6 +72,11 @@ impl DrawTarget for Canvas {
     }
 }
 
+/// What can be drawn on without failing.
+trait Sheet: DrawTarget<Color = Rgb888, Error = Infallible> {}
+
+impl<T: DrawTarget<Color = Rgb888, Error = Infallible>> Sheet for T {}
+
 /// What is drawn of one part.
 pub struct Sketch<'a> {
     /// The region of interest of the frame.
@@ -86,11 +93,7 @@ pub struct Sketch<'a> {
 
 /// Draws `sketch`. Sizes follow from the part; nothing is cut off that is inside the region of interest.
 pub fn draw_part(sketch: &Sketch<'_>) -> RgbImage {
-    let [left, top, right, bottom] = sketch.part_px;
-    let left = left.saturating_sub(AROUND_PX);
-    let top = top.saturating_sub(AROUND_PX);
-    let right = (right + AROUND_PX).min(sketch.picture.width_px);
-    let bottom = (bottom + AROUND_PX).min(sketch.picture.height_px);
+    let [left, top, right, bottom] = shown_px(sketch);
     let (width, height) = ((right - left) * ZOOM, (bottom - top) * ZOOM);
     let below = (sketch.words.len() + 2) * LINE_PX + 8;
     let sheet = RgbImage::from_pixel(
@@ -101,10 +104,30 @@ pub fn draw_part(sketch: &Sketch<'_>) -> RgbImage {
     let mut canvas = Canvas(sheet);
     enlarge(&mut canvas.0, sketch.picture, left, top, width, height);
     if let Some(marks) = sketch.marks {
-        draw_marks(&mut canvas, marks, left, top);
+        let shown = Rectangle::new(Point::zero(), Size::new(width as u32, height as u32));
+        draw_marks(&mut canvas.clipped(&shown), marks, left, top);
     }
     write_words(&mut canvas, sketch, width, height);
     canvas.0
+}
+
+/// The part and the taught shape with some belt around them, inside the picture: left, top, right, bottom.
+fn shown_px(sketch: &Sketch<'_>) -> [usize; 4] {
+    let [mut left, mut top, mut right, mut bottom] = sketch.part_px;
+    if let Some(marks) = sketch.marks {
+        let end = |start: i32, length: usize| (start.max(0) as usize) + length;
+        left = left.min(marks.left_px.max(0) as usize);
+        top = top.min(marks.top_px.max(0) as usize);
+        right = right.max(end(marks.left_px, marks.width_px));
+        bottom = bottom.max(end(marks.top_px, marks.height_px));
+    }
+    let picture = &sketch.picture;
+    [
+        left.saturating_sub(AROUND_PX),
+        top.saturating_sub(AROUND_PX),
+        (right + AROUND_PX).min(picture.width_px),
+        (bottom + AROUND_PX).min(picture.height_px),
+    ]
 }
 
 fn enlarge(
@@ -147,7 +170,7 @@ impl Placed<'_> {
     }
 }
 
-fn draw_marks(canvas: &mut Canvas, marks: &Marks, left: usize, top: usize) {
+fn draw_marks(canvas: &mut impl Sheet, marks: &Marks, left: usize, top: usize) {
     let placed = Placed {
         marks,
         left: left as i64,
@@ -164,7 +187,7 @@ fn draw_marks(canvas: &mut Canvas, marks: &Marks, left: usize, top: usize) {
 }
 
 /// Slanted lines over every pixel of `mask`; `slant` is 1 or -1.
-fn hatch(canvas: &mut Canvas, placed: &Placed<'_>, mask: &[bool], colour: Rgb888, slant: i32) {
+fn hatch(canvas: &mut impl Sheet, placed: &Placed<'_>, mask: &[bool], colour: Rgb888, slant: i32) {
     let width = placed.marks.width_px;
     for at in (0..mask.len()).filter(|&at| mask[at]) {
         let corner = placed.corner(at % width, at / width);
@@ -178,7 +201,7 @@ fn hatch(canvas: &mut Canvas, placed: &Placed<'_>, mask: &[bool], colour: Rgb888
 }
 
 /// Lines between pixels of which just one belongs to the taught shape.
-fn outline(canvas: &mut Canvas, placed: &Placed<'_>) {
+fn outline(canvas: &mut impl Sheet, placed: &Placed<'_>) {
     let marks = placed.marks;
     let (width, height) = (marks.width_px, marks.height_px);
     let taught = |x: usize, y: usize| x < width && y < height && marks.taught[y * width + x];
@@ -198,7 +221,7 @@ fn outline(canvas: &mut Canvas, placed: &Placed<'_>) {
     }
 }
 
-fn ring(canvas: &mut Canvas, at: Point, colour: Rgb888) {
+fn ring(canvas: &mut impl Sheet, at: Point, colour: Rgb888) {
     for (diameter, colour, width) in [(24, INK, 5), (24, colour, 3)] {
         let style = PrimitiveStyle::with_stroke(colour, width);
         let Ok(()) = Circle::with_center(at, diameter)
@@ -207,7 +230,7 @@ fn ring(canvas: &mut Canvas, at: Point, colour: Rgb888) {
     }
 }
 
-fn write_words(canvas: &mut Canvas, sketch: &Sketch<'_>, width: usize, height: usize) {
+fn write_words(canvas: &mut impl Sheet, sketch: &Sketch<'_>, width: usize, height: usize) {
     let style = MonoTextStyle::new(&FONT_9X15, INK);
     let mut y = height as i32 + 8;
     for line in sketch.words {
@@ -232,7 +255,7 @@ fn write_words(canvas: &mut Canvas, sketch: &Sketch<'_>, width: usize, height: u
 }
 
 /// What the marks mean, each beside a patch of itself.
-fn legend(canvas: &mut Canvas, y: i32) {
+fn legend(canvas: &mut impl Sheet, y: i32) {
     let style = MonoTextStyle::new(&FONT_9X15, INK);
     let entries = [
         ("taught", OUTLINE, 0),

@@ -83,7 +83,7 @@ pub fn summarize(outcome: &Outcome, settings: &Settings) -> Summary {
             .unseen
             .iter()
             .map(|(stretch, _)| stretch.to_mm - stretch.from_mm)
-            .sum(),
+            .fold(0.0, |sum, mm| sum + mm),
         overdue_frames: outcome.health.overdue_frames,
         specks: outcome.health.specks,
         worst_margin: with(Verdict::Keep)

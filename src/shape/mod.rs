@@ -1,23 +1,43 @@
 //! The taught silhouette, where a part lies, and how far it is from the taught one.
 
+mod align;
+mod bitmap;
+mod distance;
+#[cfg(test)]
+mod drawn;
+mod edge;
+mod error;
+mod feret;
+mod field;
+mod gauge;
+mod judge;
+mod measure;
+mod model;
+mod overlay;
+mod patches;
+mod pose;
+#[cfg(test)]
+mod pose_accuracy;
+mod raster;
+mod search;
+mod severity;
+mod shortlist;
+mod silhouette;
+mod skeleton;
+mod symmetry;
 mod verdict;
 
+pub use bitmap::Bitmap;
+pub use distance::{DistanceTransform, NOWHERE};
+pub use error::ShapeError;
+pub use gauge::gauge_masks;
+pub use judge::{Drawing, Judge};
+pub use measure::{Measurer, Measures, skeleton};
+pub use model::Model;
+pub use pose::Found;
+pub use silhouette::{MAX_SIDE_PX, Silhouette};
+pub use symmetry::Symmetry;
 pub use verdict::{Reason, Reasons, Verdict};
-
-use crate::stage::{Region, Run};
-
-/// A taught silhouette: for every pixel the share of good parts that cover it.
-#[derive(Clone, Debug, PartialEq)]
-pub struct Silhouette {
-    /// Columns.
-    pub width_px: usize,
-    /// Rows.
-    pub height_px: usize,
-    /// Edge length of a pixel on the belt.
-    pub mm_per_px: f64,
-    /// Row by row; 255 is covered by all good parts. The silhouette proper is value > 127 (the majority).
-    pub share: Vec<u8>,
-}
 
 /// Where a silhouette lies in the picture. Pixel (0, 0) has its centre at (0.0, 0.0).
 #[derive(Clone, Copy, Debug, Default, PartialEq)]
@@ -93,19 +113,4 @@ pub struct Judged {
     /// How near the limits: the largest share of a limit that is used up. At most 1 is within; infinite where a reason
     /// has no figure (touching, flipped, unknown).
     pub severity: f64,
-}
-
-/// Judges regions against the taught shapes, with its own buffers.
-pub struct Judge;
-
-impl Judge {
-    /// `shapes` must have the picture's scale.
-    pub fn new(_shapes: Vec<(Silhouette, Limits)>, _common: Common) -> Self {
-        todo!()
-    }
-
-    /// Judges one whole region; `runs` are its own, sorted by row, then column.
-    pub fn judge(&mut self, _region: &Region, _runs: &[Run]) -> Judged {
-        todo!()
-    }
 }

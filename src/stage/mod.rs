@@ -42,9 +42,16 @@ mod scene;
 
 mod kernels;
 
+mod buffer;
 mod element;
+
 mod slide;
+
+mod across;
+mod diagonals;
 mod tophat;
+
+mod morphology;
 
 mod forest;
 mod runs;
@@ -59,8 +66,10 @@ mod plain;
 mod steps;
 
 pub use kernels::{KernelError, Level};
+pub use morphology::{dilation, erosion};
 pub use pipeline::Stage;
 pub use plan::{Element, Plan, Polarity, Threshold};
 pub use scene::{Region, Run, Scene};
 pub use steps::Steps;
 pub use threshold::otsu_level;
+pub use tophat::TopHat;

@@ -106,7 +106,7 @@ impl Stage {
             ..
         } = self;
         let kernels = self.level;
-        let width = self.plan.width_px.max(1);
+        let width = self.plan.width_px;
         let mut counts: Counts = [[0; 256]; 4];
         top_hat.run(picture, |y, upper, lower| {
             let row = &mut values[y * width..][..width];
@@ -114,7 +114,7 @@ impl Stage {
             kernels.count(row, &mut counts);
         });
         let level = threshold::otsu_level(&threshold::total(&counts)).max(floor);
-        for row in values.chunks_exact(width) {
+        for row in values.chunks_exact(width.max(1)) {
             kernels.mark(row, level, bits);
             raw.push_row(bits);
         }

@@ -63,17 +63,17 @@ pub fn set_of(element: Element) -> Vec<(isize, isize)> {
     }
 }
 
-fn reflected(set: &[(isize, isize)]) -> Vec<(isize, isize)> {
+pub fn reflected(set: &[(isize, isize)]) -> Vec<(isize, isize)> {
     set.iter().map(|&(x, y)| (-x, -y)).collect()
 }
 
 /// The smallest value under the element, outside ignored.
-fn erode(picture: &Grid<u8>, set: &[(isize, isize)]) -> Grid<u8> {
+pub fn erode(picture: &Grid<u8>, set: &[(isize, isize)]) -> Grid<u8> {
     over(picture, set).map_cells(|values| values.min())
 }
 
 /// The largest value under the element, outside ignored.
-fn dilate(picture: &Grid<u8>, set: &[(isize, isize)]) -> Grid<u8> {
+pub fn dilate(picture: &Grid<u8>, set: &[(isize, isize)]) -> Grid<u8> {
     over(picture, set).map_cells(|values| values.max())
 }
 

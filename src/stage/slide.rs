@@ -2,8 +2,9 @@
 
 use std::ops::Range;
 
+use super::buffer::Aligned;
 use super::element::Span;
-use super::kernels::{Extremum, Job, Level, Rows, RowsMut};
+use super::kernels::{Extremum, Job, Level, Rows, RowsMut, suffix_stride};
 
 /// Bands have about this many rows, so that what one step writes is still in the cache for the next.
 const BAND_ROWS: usize = 64;
@@ -15,7 +16,7 @@ pub(crate) struct Slide {
     width_px: usize,
     height_px: usize,
     /// The suffix extrema of the last block, and one row of the kernel's.
-    suffix: Vec<u8>,
+    suffix: Aligned,
     /// The next block.
     next: usize,
     /// How many blocks a picture has.
@@ -36,7 +37,7 @@ impl Slide {
             span,
             width_px,
             height_px,
-            suffix: vec![op.neutral(); (span.size() + 1) * width_px],
+            suffix: Aligned::new(op.neutral(), (span.size() + 1) * suffix_stride(width_px)),
             next: 0,
             blocks: match height_px {
                 0 => 0,
@@ -71,6 +72,7 @@ impl Slide {
             width_px: self.width_px,
             height_px: self.height_px,
             span: self.span,
+            src_top: 0,
             first: self.next,
             count,
         })
@@ -82,25 +84,34 @@ impl Slide {
         Some(job.rows_out())
     }
 
-    /// Yields the [`Self::upcoming`] rows into `dst`, which begins with the first of them; `src` begins with row 0.
-    pub fn step(&mut self, level: Level, ready: usize, src: Rows, dst: RowsMut) {
-        self.advance(level, ready, self.blocks_per_step(), src, dst);
+    /// The first row that steps to come will read.
+    pub fn needed(&self) -> usize {
+        self.next * self.span.size()
+    }
+
+    /// Yields the [`Self::upcoming`] rows into `dst`, which begins with the first of them; `src` begins with row `src_top`,
+    /// which must not come after [`Self::needed`].
+    pub fn step(&mut self, level: Level, ready: usize, src_top: usize, src: Rows, dst: RowsMut) {
+        if let Some(mut job) = self.job(ready, self.blocks_per_step()) {
+            job.src_top = src_top;
+            self.run(level, job, src, dst);
+        }
     }
 
     /// The whole picture at once.
     pub fn whole(&mut self, level: Level, src: Rows, dst: RowsMut) {
         self.restart();
-        self.advance(level, self.height_px, usize::MAX, src, dst);
+        if let Some(job) = self.job(self.height_px, usize::MAX) {
+            self.run(level, job, src, dst);
+        }
     }
 
-    fn advance(&mut self, level: Level, ready: usize, most: usize, src: Rows, dst: RowsMut) {
-        if let Some(job) = self.job(ready, most) {
-            let suffix = RowsMut {
-                pixels: &mut self.suffix,
-                stride_px: self.width_px,
-            };
-            level.slide(self.op, job, src, dst, suffix);
-            self.next += job.count;
-        }
+    fn run(&mut self, level: Level, job: Job, src: Rows, dst: RowsMut) {
+        let suffix = RowsMut {
+            pixels: &mut self.suffix,
+            stride_px: suffix_stride(self.width_px),
+        };
+        level.slide(self.op, job, src, dst, suffix);
+        self.next += job.count;
     }
 }

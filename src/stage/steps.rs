@@ -30,11 +30,7 @@ impl Stage {
             filled: vec![0; pixels],
             level: self.scene.level,
         };
-        let width = picture.width_px;
-        let level = self.level;
-        self.top_hat.run(picture, |y, upper, lower| {
-            level.subtract(upper, lower, &mut steps.top_hat[y * width..][..width]);
-        });
+        self.top_hat.picture(picture, &mut steps.top_hat);
         self.raw.draw(&mut steps.binary);
         self.filled.draw(&mut steps.filled);
         steps

@@ -10,17 +10,19 @@
 //! which the intermediate results are those of the endless plane. Then every pixel of the element that lies inside is
 //! reached by a way that the passes follow, and none outside is.
 
+use std::ops::Range;
+
+use super::across::{Across, STRIP};
+use super::buffer::{Aligned, LINE, Reel};
+use super::diagonals::Diagonals;
 use super::element::{Segments, Span};
 use super::kernels::{Extremum, Level, Rows, RowsMut};
 use super::plan::{Plan, Polarity};
 use super::slide::Slide;
 use crate::frames::Gray;
 
-/// Rows of a strip that is turned: whole cache lines.
-const STRIP: usize = 64;
-
 /// The top-hat with its buffers.
-pub(crate) struct TopHat {
+pub struct TopHat {
     level: Level,
     polarity: Polarity,
     width: usize,
@@ -30,22 +32,19 @@ pub(crate) struct TopHat {
     across: Across,
     /// Grows it again.
     down_second: Slide,
-    /// What the passes along the rows start from and leave.
-    middle: Vec<u8>,
+    /// What the passes along the rows start from and leave; not used by an octagon.
+    middle: Reel,
     /// Rows of the opening or closing as they come out.
-    band: Vec<u8>,
+    band: Aligned,
     diagonals: Option<Diagonals>,
 }
 
 impl TopHat {
+    /// Makes the buffers for the size, the polarity and the element of `plan`.
     pub fn new(plan: &Plan, level: Level) -> Self {
-        let Segments {
-            across,
-            down,
-            diagonal,
-        } = Segments::of(plan.element);
+        let segments = Segments::of(plan.element);
         let (width, height) = (plan.width_px, plan.height_px);
-        let [first, second] = match plan.polarity {
+        let ops = match plan.polarity {
             Polarity::Bright => [Extremum::Least, Extremum::Greatest],
             Polarity::Dark => [Extremum::Greatest, Extremum::Least],
         };
@@ -54,56 +53,77 @@ impl TopHat {
             Polarity::Bright => [span, span.reflected()],
             Polarity::Dark => [span.reflected(), span],
         };
-        let [down_a, down_b] = spans(down);
-        let down_second = Slide::new(second, down_b, width, height);
+        let [span_first, span_second] = spans(segments.down);
+        let down_first = Slide::new(ops[0], span_first, width, height);
+        let down_second = Slide::new(ops[1], span_second, width, height);
+        let live = down_first.most_rows() + STRIP + segments.down.size();
+        let steps = segments.diagonal;
         Self {
             level,
             polarity: plan.polarity,
             width,
             height,
-            down_first: Slide::new(first, down_a, width, height),
-            across: Across::new([first, second], spans(across), width),
-            middle: vec![0; width * height],
-            band: vec![0; width * down_second.most_rows()],
+            across: Across::new(ops, spans(segments.across), width),
+            middle: Reel::new(width, if steps > 0 { 0 } else { height }, live),
+            band: Aligned::new(0, width.next_multiple_of(LINE) * down_second.most_rows()),
+            down_first,
             down_second,
-            diagonals: (diagonal > 0)
-                .then(|| Diagonals::new([first, second], diagonal, width, height)),
+            diagonals: (steps > 0).then(|| Diagonals::new(ops, steps, width, height)),
         }
+    }
+
+    /// Writes the top-hat to `out`, without padding.
+    ///
+    /// # Panics
+    /// If the picture has not the planned size or `out` is shorter.
+    pub fn picture(&mut self, picture: Gray<'_>, out: &mut [u8]) {
+        assert_eq!(
+            (picture.width_px, picture.height_px),
+            (self.width, self.height)
+        );
+        let (level, width) = (self.level, self.width);
+        self.run(picture, |y, upper, lower| {
+            level.subtract(upper, lower, &mut out[y * width..][..width]);
+        });
     }
 
     /// Calls `sink` with every row in order: its number, and two rows whose difference (first minus second, never
     /// negative) is the top-hat.
-    pub fn run(&mut self, picture: Gray, mut sink: impl FnMut(usize, &[u8], &[u8])) {
+    pub(crate) fn run(&mut self, picture: Gray, mut sink: impl FnMut(usize, &[u8], &[u8])) {
         self.down_first.restart();
         self.down_second.restart();
+        self.middle.restart();
         if self.diagonals.is_some() {
             self.shrink_and_grow_by_diagonals(picture);
             self.grow_rows(picture, self.height, &mut sink);
             return;
         }
-        let mut turned = 0;
+        let mut ready = 0;
         while let Some(rows) = self.shrink_rows(picture) {
-            let whole = match rows.end == self.height {
-                true => self.height,
-                false => rows.end / STRIP * STRIP,
-            };
-            self.across.run(self.level, &mut self.middle, turned..whole);
-            turned = whole;
-            self.grow_rows(picture, turned, &mut sink);
+            ready = self.across_rows(ready, rows.end);
+            self.grow_rows(picture, ready, &mut sink);
         }
     }
 
     /// One band of the first pass down the columns.
-    fn shrink_rows(&mut self, picture: Gray) -> Option<std::ops::Range<usize>> {
+    fn shrink_rows(&mut self, picture: Gray) -> Option<Range<usize>> {
         let rows = self.down_first.upcoming(self.height)?;
-        let mut middle = RowsMut {
-            pixels: &mut self.middle,
-            stride_px: self.width,
-        };
-        let dst = middle.from(rows.start);
+        let middle = self.middle.append(rows.len(), self.down_second.needed());
+        let all = self.height;
         self.down_first
-            .step(self.level, self.height, rows_of(picture), dst);
+            .step(self.level, all, 0, rows_of(picture), middle);
         Some(rows)
+    }
+
+    /// Both passes along the rows from `top` on, in whole strips as far as `end`; where they end.
+    fn across_rows(&mut self, mut top: usize, end: usize) -> usize {
+        while end - top >= STRIP || (end == self.height && top < end) {
+            let count = STRIP.min(end - top);
+            self.across
+                .in_place(self.level, count, self.middle.rows_from(top));
+            top += count;
+        }
+        top
     }
 
     /// The last pass down the columns, as far as `ready` rows allow.
@@ -113,21 +133,19 @@ impl TopHat {
         ready: usize,
         sink: &mut impl FnMut(usize, &[u8], &[u8]),
     ) {
-        let width = self.width;
+        let (width, stride) = (self.width, self.width.next_multiple_of(LINE));
         while let Some(rows) = self.down_second.upcoming(ready) {
-            let src = match &self.diagonals {
-                Some(diagonals) => diagonals.grown(),
-                None => Rows {
-                    pixels: &self.middle,
-                    stride_px: width,
-                },
+            let (top, src) = match &self.diagonals {
+                Some(diagonals) => (0, diagonals.grown()),
+                None => self.middle.rows(),
             };
-            let dst = RowsMut {
+            let band = RowsMut {
                 pixels: &mut self.band,
-                stride_px: width,
+                stride_px: stride,
             };
-            self.down_second.step(self.level, ready, src, dst);
-            for (y, hull) in rows.zip(self.band.chunks_exact(width.max(1))) {
+            self.down_second.step(self.level, ready, top, src, band);
+            for (i, y) in rows.enumerate() {
+                let hull = &self.band[i * stride..][..width];
                 match self.polarity {
                     Polarity::Bright => sink(y, picture.row(y), hull),
                     Polarity::Dark => sink(y, hull, picture.row(y)),
@@ -138,19 +156,19 @@ impl TopHat {
 
     /// Everything but the last pass, for an octagon.
     fn shrink_and_grow_by_diagonals(&mut self, picture: Gray) {
+        let (level, height) = (self.level, self.height);
         let Some(diagonals) = &mut self.diagonals else {
             return;
         };
         self.down_first
-            .whole(self.level, rows_of(picture), diagonals.input());
-        diagonals.shrink(self.level);
-        for top in (0..self.height).step_by(STRIP) {
-            let count = STRIP.min(self.height - top);
+            .whole(level, rows_of(picture), diagonals.input());
+        diagonals.shrink(level);
+        for top in (0..height).step_by(STRIP) {
+            let count = STRIP.min(height - top);
             let (src, mut dst) = diagonals.shrunk_and_input();
-            self.across
-                .strip(self.level, count, src.from(top), dst.from(top));
+            self.across.run(level, count, src.from(top), dst.from(top));
         }
-        diagonals.grow(self.level);
+        diagonals.grow(level);
     }
 }
 
@@ -158,198 +176,6 @@ fn rows_of(picture: Gray<'_>) -> Rows<'_> {
     Rows {
         pixels: picture.pixels,
         stride_px: picture.stride_px,
-    }
-}
-
-/// Both passes along the rows, one strip of rows at a time.
-struct Across {
-    width: usize,
-    first: Slide,
-    second: Slide,
-    /// A strip, turned: a row for every column of the picture.
-    turned: Vec<u8>,
-    /// The same after the first pass.
-    shrunk: Vec<u8>,
-}
-
-impl Across {
-    fn new(ops: [Extremum; 2], spans: [Span; 2], width: usize) -> Self {
-        Self {
-            width,
-            first: Slide::new(ops[0], spans[0], STRIP, width),
-            second: Slide::new(ops[1], spans[1], STRIP, width),
-            turned: vec![0; STRIP * width],
-            shrunk: vec![0; STRIP * width],
-        }
-    }
-
-    /// On `rows` of a picture without padding, in place.
-    fn run(&mut self, level: Level, picture: &mut [u8], rows: std::ops::Range<usize>) {
-        for top in rows.clone().step_by(STRIP) {
-            let count = STRIP.min(rows.end - top);
-            let strip = &mut picture[top * self.width..][..count * self.width];
-            level.turn(
-                self.width,
-                count,
-                Rows {
-                    pixels: strip,
-                    stride_px: self.width,
-                },
-                turned(&mut self.turned),
-            );
-            self.open(level);
-            self.turn_back(
-                level,
-                count,
-                RowsMut {
-                    pixels: strip,
-                    stride_px: self.width,
-                },
-            );
-        }
-    }
-
-    /// On `count` rows, from one picture to another.
-    fn strip(&mut self, level: Level, count: usize, src: Rows, dst: RowsMut) {
-        level.turn(self.width, count, src, turned(&mut self.turned));
-        self.open(level);
-        self.turn_back(level, count, dst);
-    }
-
-    fn open(&mut self, level: Level) {
-        let src = Rows {
-            pixels: &self.turned,
-            stride_px: STRIP,
-        };
-        self.first.whole(level, src, turned(&mut self.shrunk));
-        let src = Rows {
-            pixels: &self.shrunk,
-            stride_px: STRIP,
-        };
-        self.second.whole(level, src, turned(&mut self.turned));
-    }
-
-    fn turn_back(&mut self, level: Level, count: usize, dst: RowsMut) {
-        let src = Rows {
-            pixels: &self.turned,
-            stride_px: STRIP,
-        };
-        level.turn(count, self.width, src, dst);
-    }
-}
-
-fn turned(pixels: &mut [u8]) -> RowsMut<'_> {
-    RowsMut {
-        pixels,
-        stride_px: STRIP,
-    }
-}
-
-/// The diagonal passes of an octagon, on pictures with a margin.
-///
-/// In a picture whose rows begin every `stride` bytes the pixel below and to the right is `stride + 1` bytes on: read
-/// with rows of that length, diagonals stand upright, and the pass down the columns does for them too. `stride - 1` does
-/// for the other diagonal. The margin is so wide that a diagonal segment cannot reach another row's pixels.
-struct Diagonals {
-    margin: usize,
-    stride: usize,
-    falling: [Slide; 2],
-    rising: [Slide; 2],
-    /// Margin neutral for the first extremum; what `shrink` starts from.
-    flat: Vec<u8>,
-    /// Margin neutral for the second one; what `grow` starts from.
-    low: Vec<u8>,
-    /// After the falling diagonal.
-    half: Vec<u8>,
-    /// After both.
-    done: Vec<u8>,
-}
-
-impl Diagonals {
-    fn new(ops: [Extremum; 2], steps: usize, width: usize, height: usize) -> Self {
-        let stride = width + 2 * steps;
-        let bytes = stride * (height + 2 * steps);
-        let rows = |length: usize| bytes.div_ceil(length);
-        let room = (rows(stride + 1) * (stride + 1)).max(rows(stride - 1) * (stride - 1));
-        let span = Span {
-            before: steps,
-            after: steps,
-        };
-        let slides = |length| ops.map(|op| Slide::new(op, span, length, rows(length)));
-        Self {
-            margin: steps,
-            stride,
-            falling: slides(stride + 1),
-            rising: slides(stride - 1),
-            flat: vec![ops[0].neutral(); room],
-            low: vec![ops[1].neutral(); room],
-            half: vec![0; room],
-            done: vec![0; room],
-        }
-    }
-
-    /// Where the first pixel of the picture is.
-    fn origin(&self) -> usize {
-        self.margin * self.stride + self.margin
-    }
-
-    fn input(&mut self) -> RowsMut<'_> {
-        let start = self.origin();
-        RowsMut {
-            pixels: &mut self.flat[start..],
-            stride_px: self.stride,
-        }
-    }
-
-    fn shrink(&mut self, level: Level) {
-        self.both(level, 0);
-    }
-
-    fn shrunk_and_input(&mut self) -> (Rows<'_>, RowsMut<'_>) {
-        let start = self.origin();
-        let src = Rows {
-            pixels: &self.done[start..],
-            stride_px: self.stride,
-        };
-        (
-            src,
-            RowsMut {
-                pixels: &mut self.low[start..],
-                stride_px: self.stride,
-            },
-        )
-    }
-
-    fn grow(&mut self, level: Level) {
-        self.both(level, 1);
-    }
-
-    fn grown(&self) -> Rows<'_> {
-        Rows {
-            pixels: &self.done[self.origin()..],
-            stride_px: self.stride,
-        }
-    }
-
-    fn both(&mut self, level: Level, which: usize) {
-        let src = if which == 0 { &self.flat } else { &self.low };
-        let sheared = |length| {
-            move |pixels| Rows {
-                pixels,
-                stride_px: length,
-            }
-        };
-        let (down, up) = (self.stride + 1, self.stride - 1);
-        let half = RowsMut {
-            pixels: &mut self.half,
-            stride_px: down,
-        };
-        self.falling[which].whole(level, sheared(down)(src), half);
-        let done = RowsMut {
-            pixels: &mut self.done,
-            stride_px: up,
-        };
-        self.rising[which].whole(level, sheared(up)(&self.half), done);
     }
 }
 

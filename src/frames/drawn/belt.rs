@@ -183,7 +183,7 @@ fn overlap_mm(a: &Part, b: &Part) -> f64 {
         half_mm: 2.0 * a.made.body.nominal.radius_mm,
     };
     let both_mm = |p: Point| -a.signed_mm(p).max(b.signed_mm(p));
-    2.0 * highest(all, 0.02, both_mm, |p| -both_mm(p))
+    2.0 * highest(all, 0.0, both_mm, |p| -both_mm(p))
 }
 
 /// How far a part reaches downstream and upstream from its centre.

@@ -74,8 +74,6 @@ pub(super) struct Body {
     pub burrs: Vec<Form>,
 }
 
-/// How accurately figures and extents are found.
-const TOLERANCE_MM: f64 = 0.005;
 /// No drawn burr reaches farther than this beyond the nominal shape.
 pub(super) const LONGEST_BURR_MM: f64 = 12.0;
 
@@ -84,48 +82,62 @@ impl Body {
     /// distance to the outline except around the corners that cuts and burrs make.
     pub(super) fn signed_mm(&self, point: Point) -> f64 {
         let whole_mm = self.scale * self.nominal.outline.signed_mm(point * (1.0 / self.scale));
-        let cut = |least_mm: f64, form: &Form| least_mm.max(-form.signed_mm(point));
-        let grown = |least_mm: f64, form: &Form| least_mm.min(form.signed_mm(point));
-        let cut_mm = self.cuts.iter().fold(whole_mm, cut);
-        self.burrs.iter().fold(cut_mm, grown)
+        let cut_mm = whole_mm.max(-nearest_mm(&self.cuts, point));
+        cut_mm.min(nearest_mm(&self.burrs, point))
     }
 
     /// The largest inside distance of the nominal shape over what is missing of it: how deep a bite goes. A tip that
-    /// has broken off is as deep as the tip is thick, not as it is long.
-    pub(super) fn missing_mm(&self) -> f64 {
+    /// has broken off is as deep as the tip is thick, not as it is long. `at_least_mm` where nothing is deeper.
+    pub(super) fn missing_mm(&self, at_least_mm: f64) -> f64 {
         let nominal = &self.nominal.outline;
         highest(
             Square::around(self.nominal.radius_mm),
-            TOLERANCE_MM,
+            at_least_mm.max(self.size_mm(-1.0)),
             |p| -nominal.signed_mm(p),
-            |p| -self.signed_mm(p),
+            |p| nearest_mm(&self.cuts, p).max(-nearest_mm(&self.burrs, p)),
         )
     }
 
-    /// The largest distance to the nominal shape over what is too much: how far a burr sticks out.
-    pub(super) fn excess_mm(&self) -> f64 {
+    /// The largest distance to the nominal shape over what is too much: how far a burr sticks out. `at_least_mm` where
+    /// nothing sticks out farther.
+    pub(super) fn excess_mm(&self, at_least_mm: f64) -> f64 {
         let nominal = &self.nominal.outline;
         highest(
             self.all(),
-            TOLERANCE_MM,
+            at_least_mm.max(self.size_mm(1.0)),
             |p| nominal.signed_mm(p),
-            |p| self.signed_mm(p),
+            |p| nearest_mm(&self.burrs, p),
         )
+    }
+
+    /// How far a part of another size lies within (`side` -1) or beyond (1) the nominal shape, found at many places of
+    /// its own outline: what is missing or too much without a cut or a burr is farthest there.
+    fn size_mm(&self, side: f64) -> f64 {
+        const STEP_MM: f64 = 0.2;
+        let outline = &self.nominal.outline;
+        let kept = |p: &Point| nearest_mm(&self.cuts, *p).min(nearest_mm(&self.burrs, *p)) > 0.0;
+        outline
+            .chords(STEP_MM)
+            .map(|(p, _)| p * self.scale)
+            .filter(kept)
+            .map(|p| side * outline.signed_mm(p))
+            .fold(0.0, f64::max)
     }
 
     /// How far the part reaches from its origin towards `direction`, a way of length 1.
     pub(super) fn reach_mm(&self, direction: Point) -> f64 {
-        highest(
-            self.all(),
-            TOLERANCE_MM,
-            |p| p.dot(direction),
-            |p| self.signed_mm(p),
-        )
+        highest(self.all(), 0.0, |p| p.dot(direction), |p| self.signed_mm(p))
     }
 
     fn all(&self) -> Square {
         Square::around(self.nominal.radius_mm + LONGEST_BURR_MM)
     }
+}
+
+/// Distance to the nearest of several figures, negative inside any of them.
+fn nearest_mm(forms: &[Form], point: Point) -> f64 {
+    let each_mm = forms.iter().map(|form| form.signed_mm(point));
+    each_mm.fold(f64::INFINITY, f64::min)
 }
 
 #[cfg(test)]

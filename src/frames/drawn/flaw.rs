@@ -99,17 +99,18 @@ impl Flaw {
     /// `body` with this flaw at the size at which its figure is the wanted one; `None` if no size gives it.
     fn sized(self, body: &Body, wanted_mm: f64) -> Option<Body> {
         let (mut low_mm, mut high_mm) = (0.0, (wanted_mm * 3.0).min(LARGEST_MM));
-        if self.figure_mm(&self.on(body, high_mm)) < wanted_mm {
+        let beyond_mm = |body: &Body| self.figure_mm(body, wanted_mm - 2.0 * CLOSE_MM) - wanted_mm;
+        if beyond_mm(&self.on(body, high_mm)) < 0.0 || beyond_mm(&self.on(body, low_mm)) > 0.0 {
             return None;
         }
         for _ in 0..24 {
             let size_mm = (low_mm + high_mm) / 2.0;
             let made = self.on(body, size_mm);
-            let figure_mm = self.figure_mm(&made);
-            if (figure_mm - wanted_mm).abs() < CLOSE_MM {
+            let beyond_mm = beyond_mm(&made);
+            if beyond_mm.abs() < CLOSE_MM {
                 return Some(made);
             }
-            *(if figure_mm < wanted_mm {
+            *(if beyond_mm < 0.0 {
                 &mut low_mm
             } else {
                 &mut high_mm
@@ -118,10 +119,12 @@ impl Flaw {
         None
     }
 
-    fn figure_mm(self, body: &Body) -> f64 {
+    fn figure_mm(self, body: &Body, at_least_mm: f64) -> f64 {
         match self {
-            Self::Bite { .. } | Self::Notch { .. } | Self::Chip { .. } => body.missing_mm(),
-            Self::Burr { .. } => body.excess_mm(),
+            Self::Bite { .. } | Self::Notch { .. } | Self::Chip { .. } => {
+                body.missing_mm(at_least_mm)
+            }
+            Self::Burr { .. } => body.excess_mm(at_least_mm),
         }
     }
 

@@ -48,7 +48,7 @@ impl Look {
                 glares: 3,
                 glare: 1.25,
                 crumbs: 5,
-                vignetting: 3.4,
+                vignetting: 4.0,
                 noise: 1.0,
             },
             Scene::Gaskets => Self {
@@ -64,7 +64,7 @@ impl Look {
                 glares: 3,
                 glare: 0.95,
                 crumbs: 4,
-                vignetting: 3.4,
+                vignetting: 4.0,
                 noise: 1.0,
             },
         }
@@ -114,10 +114,10 @@ fn pore(look: &Look, made: &Made, dice: &mut Dice) -> Option<Spot> {
     })
 }
 
-/// A reflex, of at most 0.4 times the area that the settings have filled.
+/// A reflex, of at most 0.3 times the area that the settings have filled.
 fn glare(look: &Look, job: &Job, made: &Made, dice: &mut Dice) -> Option<Spot> {
     let wide_mm = dice.between(0.6, 1.2);
-    let largest_mm = 0.4 * job.glare_mm2 / (std::f64::consts::PI * wide_mm);
+    let largest_mm = 0.3 * job.glare_mm2 / (std::f64::consts::PI * wide_mm);
     let long_mm = (wide_mm * dice.between(1.0, 2.2)).min(largest_mm);
     let at = inside(made, long_mm.max(wide_mm) + 1.5, dice)?;
     (long_mm >= wide_mm * 0.8).then(|| Spot {

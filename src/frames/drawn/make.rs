@@ -116,8 +116,8 @@ impl Made {
             turn: Point::towards(angle_deg.to_radians()),
             angle_deg,
             flipped: kind == Kind::Flipped,
-            missing_mm: body.missing_mm(),
-            excess_mm: body.excess_mm(),
+            missing_mm: body.missing_mm(0.0),
+            excess_mm: body.excess_mm(0.0),
             body,
             reach: Reach {
                 left_mm: 0.0,

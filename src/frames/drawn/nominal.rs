@@ -25,7 +25,7 @@ impl Nominal {
             .map(|(from, _)| from.length())
             .fold(0.0, f64::max);
         let all = Square::around(radius_mm);
-        let deepest_mm = highest(all, 1e-3, |p| -outline.signed_mm(p), |_| -radius_mm);
+        let deepest_mm = highest(all, 0.0, |p| -outline.signed_mm(p), |_| -radius_mm);
         Self {
             outline,
             radius_mm,

@@ -24,6 +24,7 @@ pub(super) enum Piece {
         middle: Point,
         /// Cosine of half the sweep, -1 for the whole circle.
         half_cos: f64,
+        ends: [Point; 2],
     },
 }
 
@@ -55,6 +56,8 @@ impl Piece {
             from_rad,
             sweep_rad,
             middle: Point::towards(from_rad + sweep_rad / 2.0),
+            ends: [0.0, 1.0]
+                .map(|share| centre + Point::towards(from_rad + sweep_rad * share) * radius_mm),
             half_cos: if half_rad >= std::f64::consts::PI {
                 -1.0
             } else {
@@ -126,6 +129,7 @@ impl Piece {
                 sweep_rad,
                 middle,
                 half_cos,
+                ends,
                 ..
             } => {
                 let away = point - centre;
@@ -134,8 +138,8 @@ impl Piece {
                 if away.dot(middle) >= away_mm * half_cos {
                     return side_mm;
                 }
-                let ends = [0.0, 1.0].map(|share| (point - self.at(share).at).length());
-                ends[0].min(ends[1]).copysign(side_mm)
+                let ends_mm = ends.map(|end| (point - end).length());
+                ends_mm[0].min(ends_mm[1]).copysign(side_mm)
             }
         }
     }
@@ -170,7 +174,10 @@ impl Piece {
         let mut piece = *self;
         match &mut piece {
             Self::Line { from, .. } => *from = *from + by,
-            Self::Arc { centre, .. } => *centre = *centre + by,
+            Self::Arc { centre, ends, .. } => {
+                *centre = *centre + by;
+                *ends = ends.map(|end| end + by);
+            }
         }
         piece
     }

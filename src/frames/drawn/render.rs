@@ -20,7 +20,7 @@ const LENS_PX: f64 = 0.5;
 /// Beyond this many standard deviations an edge shows no more.
 const REACH: f64 = 4.0;
 /// The gray value of black, and how many gray values white lies above it in the middle of the picture.
-const BLACK: f32 = 4.0;
+const BLACK: f32 = 1.0;
 const WHITE: f32 = 268.0;
 /// Gray values squared of shot noise per gray value.
 const SHOT: f32 = 0.0085;
@@ -63,6 +63,8 @@ pub(super) struct Renderer {
     grain: Pattern,
     /// Per pixel: the share of the light in the middle.
     shade: Vec<f32>,
+    /// Per column: the belt's weave.
+    threads: Vec<f32>,
     /// Per pixel: reflectance of what it sees.
     seen: Vec<f32>,
     quantiles: Vec<f32>,
@@ -90,11 +92,12 @@ impl Renderer {
             clouds: Pattern::new(seed, 0, 0.8, 1.25),
             grain: Pattern::new(seed, 1, 0.5, 1.0),
             shade: shade(&view, look.vignetting),
+            threads: vec![0.0; view.width_px as usize],
             seen: vec![0.0; pixels],
             quantiles: quantiles(),
             noise: (0..256).map(shot).collect(),
             shifts_mm: shifts((view.blur_px * 2.0).ceil() + 1.0),
-            coarse_mm: shifts(view.blur_px.ceil().max(1.0)),
+            coarse_mm: shifts((view.blur_px / 2.0).ceil().max(1.0)),
             // The pixel's own width counts like the lens' blur: variance 1/12.
             edge_mm: (LENS_PX * LENS_PX + 1.0 / 12.0).sqrt() * view.mm_per_px,
             view,
@@ -128,22 +131,24 @@ impl Renderer {
 
     fn belt(&mut self, left_mm: f64) {
         let (look, mm_per_px) = (self.look, self.view.mm_per_px);
-        let wave = |mm: f64| (mm / WEAVE_MM * std::f64::consts::TAU).cos() as f32;
-        let width_px = self.view.width_px as usize;
-        for (y, row) in self.seen.chunks_exact_mut(width_px).enumerate() {
-            let y_mm = (y as f64 + 0.5) * mm_per_px;
-            let stripe = 1.0 + look.belt_stripes * self.clouds.at(3.0, y_mm * 1.7);
-            for (x, seen) in row.iter_mut().enumerate() {
-                let x_mm = left_mm + (x as f64 + 0.5) * mm_per_px;
-                let pattern = |shift_mm: &f64| {
-                    let x_mm = x_mm - shift_mm;
-                    let clouds =
-                        self.clouds.at(x_mm, y_mm) + self.clouds.at(y_mm * 0.31, x_mm * 0.31);
-                    look.belt_clouds * clouds
-                        + look.belt_weave * wave(x_mm + y_mm) * wave(x_mm - y_mm)
-                };
-                let sum: f32 = self.coarse_mm.iter().map(pattern).sum();
-                *seen = look.belt * stripe * (1.0 + sum / self.coarse_mm.len() as f32);
+        let at_mm = |px: usize| (px as f64 + 0.5) * mm_per_px;
+        let wave =
+            |mm: f64| look.belt_weave / 2.0 * (mm / WEAVE_MM * std::f64::consts::TAU).cos() as f32;
+        for (x, thread) in self.threads.iter_mut().enumerate() {
+            *thread = average(&self.coarse_mm, |shift_mm| {
+                wave(left_mm + at_mm(x) - shift_mm)
+            });
+        }
+        for (y, row) in self.seen.chunks_exact_mut(self.threads.len()).enumerate() {
+            let y_mm = at_mm(y);
+            let stripe = look.belt * (1.0 + look.belt_stripes * self.clouds.at(3.0, y_mm * 1.7));
+            let across = 1.0 + wave(y_mm);
+            for (x, (seen, thread)) in row.iter_mut().zip(&self.threads).enumerate() {
+                let clouds = average(&self.coarse_mm, |shift_mm| {
+                    let x_mm = left_mm + at_mm(x) - shift_mm;
+                    self.clouds.at(x_mm, y_mm) + self.clouds.at(y_mm * 0.31, x_mm * 0.31)
+                });
+                *seen = stripe * (across + thread + look.belt_clouds * clouds);
             }
         }
     }
@@ -182,15 +187,15 @@ impl Renderer {
         let centre = part.centre + part.made.seen(spot.at);
         self.within(centre, spot.long_mm * 1.2, left_mm, |this, seen, at| {
             let own = part.made.own(at - part.centre);
-            let share = this.averaged(&this.coarse_mm, |shift| {
-                let away = own - part.made.own(shift) - spot.at;
+            let share = average(&this.coarse_mm, |shift_mm| {
+                let away = own - part.made.own(Point::new(shift_mm, 0.0)) - spot.at;
                 let along = away.dot(spot.along) / spot.long_mm;
                 let across = away.cross(spot.along) / spot.wide_mm;
                 // From the middle of the spot to a little beyond its edge.
                 let falling = (1.15 - along.hypot(across)) / 0.4;
-                falling.clamp(0.0, 1.0)
+                falling.clamp(0.0, 1.0) as f32
             });
-            *seen = mix(*seen, spot.level, share as f32 * spot.cover);
+            *seen = mix(*seen, spot.level, share * spot.cover);
             0.0
         });
     }
@@ -205,14 +210,10 @@ impl Renderer {
         if depth_mm < -self.reach_mm() {
             return 1.0;
         }
-        self.averaged(&self.shifts_mm, |shift| {
-            share_below(-signed_mm(shift) / self.edge_mm)
-        }) as f32
-    }
-
-    fn averaged(&self, shifts_mm: &[f64], value: impl Fn(Point) -> f64) -> f64 {
-        let sum: f64 = shifts_mm.iter().map(|&mm| value(Point::new(mm, 0.0))).sum();
-        sum / shifts_mm.len() as f64
+        average(&self.shifts_mm, |shift_mm| {
+            let shift = Point::new(shift_mm, 0.0);
+            share_below(-signed_mm(shift) / self.edge_mm) as f32
+        })
     }
 
     /// Calls `paint` for the pixels within `radius_mm` of `centre`, the edge's reach added; it answers how far on
@@ -269,6 +270,12 @@ impl Renderer {
     }
 }
 
+/// The mean over the exposure.
+fn average(shifts_mm: &[f64], value: impl Fn(f64) -> f32) -> f32 {
+    let sum: f32 = shifts_mm.iter().map(|&shift_mm| value(shift_mm)).sum();
+    sum / shifts_mm.len() as f32
+}
+
 /// A rim that is a little darker, and a rounded edge that catches some light.
 fn shading(look: &Look, depth_mm: f64) -> f32 {
     let bump = |middle_mm: f64, width_mm: f64| {
@@ -278,8 +285,8 @@ fn shading(look: &Look, depth_mm: f64) -> f32 {
     1.0 - look.rim * bump(0.0, 1.5) + look.bevel * bump(2.0, 0.6)
 }
 
-/// Light falls off with the fourth power of the cosine of the angle to the lens' axis (natural vignetting; Born &
-/// Wolf, Principles of Optics, 4.8.1), the axis a little beside the middle of the picture.
+/// Light falls off with the fourth power of the cosine of the angle to the lens' axis (natural vignetting, the
+/// cosine-fourth law of optics textbooks), the axis a little beside the middle of the picture.
 fn shade(view: &View, vignetting: f64) -> Vec<f32> {
     let (width, height) = (f64::from(view.width_px), f64::from(view.height_px));
     let corner = (width * width + height * height) / 4.0;

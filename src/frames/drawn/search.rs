@@ -60,27 +60,31 @@ impl Ord for Open {
     }
 }
 
-/// The largest `height` within `all` where `member` is negative, too small by at most `tolerance_mm`; 0 when that is
-/// all there is. Both functions must change by at most 1 mm per mm.
+/// How much too small what [`highest`] finds may be.
+pub(super) const TOLERANCE_MM: f64 = 0.005;
+
+/// The largest `height` within `all` where `member` is negative, too small by at most [`TOLERANCE_MM`]; `at_least`
+/// where nothing is larger. Both functions must change by at most 1 mm per mm. The more `at_least` is, the less is
+/// looked at.
 pub(super) fn highest(
     all: Square,
-    tolerance_mm: f64,
+    at_least: f64,
     height: impl Fn(Point) -> f64,
     member: impl Fn(Point) -> f64,
 ) -> f64 {
-    let mut best = 0.0;
+    let mut best = at_least;
     let mut open = BinaryHeap::from([Open {
         at_most: f64::INFINITY,
         square: all,
     }]);
     while let Some(Open { at_most, square }) = open.pop() {
-        if at_most <= best + tolerance_mm {
+        if at_most <= best + TOLERANCE_MM {
             break;
         }
         for square in square.quarters() {
             let here = height(square.centre);
             let at_most = here + square.corner_mm();
-            if at_most <= best + tolerance_mm {
+            if at_most <= best + TOLERANCE_MM {
                 continue;
             }
             let outside_mm = member(square.centre);
@@ -88,7 +92,7 @@ pub(super) fn highest(
                 best = here.max(best);
             }
             // A sliver thinner than the tolerance holds nothing that counts.
-            let worth = outside_mm < square.corner_mm() && square.half_mm > tolerance_mm / 4.0;
+            let worth = outside_mm < square.corner_mm() && square.half_mm > TOLERANCE_MM / 4.0;
             if worth {
                 open.push(Open { at_most, square });
             }
@@ -105,15 +109,15 @@ mod tests {
     #[test]
     fn the_farthest_point_of_a_disc() {
         let disc = |p: Point| (p - Point::new(5.0, 0.0)).length() - 2.0;
-        let found = highest(Square::around(10.0), 1e-3, Point::length, disc);
-        assert!((6.999..=7.0).contains(&found), "{found}");
+        let found = highest(Square::around(10.0), 0.0, Point::length, disc);
+        assert!((6.995..=7.0).contains(&found), "{found}");
     }
 
     #[test]
     fn an_empty_set_has_nothing() {
         let nowhere = |_: Point| 1e9;
         assert_eq!(
-            highest(Square::around(10.0), 1e-3, Point::length, nowhere),
+            highest(Square::around(10.0), 0.0, Point::length, nowhere),
             0.0
         );
     }

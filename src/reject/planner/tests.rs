@@ -72,6 +72,34 @@ fn opens_and_shuts_earlier_by_its_leads() {
     assert_eq!(planner.next_due(&motion), None);
 }
 
+/// Source: MODBUS over Serial Line V1.02, 2.5.1: at 9600 bit/s 8 characters of 11 bits and 3.5 of silence are 13.177 ms.
+#[test]
+fn leads_are_the_wire_and_the_valve() {
+    let line = crate::settings::Line {
+        unit: 1,
+        baud: 9600,
+        parity: crate::settings::Parity::Even,
+        answer_within_ms: 50.0,
+    };
+    let outlet = crate::settings::Outlet {
+        name: "nozzle".into(),
+        coil: 0,
+        distance_mm: 250.0,
+        margin_mm: 3.0,
+        open_delay_ms: 12.0,
+        close_delay_ms: 30.0,
+        max_on_ms: 500.0,
+    };
+    let timing = OutletTiming::of(&outlet, &line);
+    let ms = |us: Micros| (us.as_ms() * 100.0).round() / 100.0;
+    assert_eq!(
+        (ms(timing.open_lead_us), ms(timing.close_lead_us)),
+        (25.18, 43.18)
+    );
+    // A request and its answer take longer than this valve's opening; its shutting takes longer still.
+    assert_eq!((ms(timing.min_on_us), ms(timing.min_off_us)), (26.36, 30.0));
+}
+
 #[test]
 fn a_standing_belt_neither_fires_nor_ages() {
     let mut motion = Motion::at_speed(0.0);

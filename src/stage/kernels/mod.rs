@@ -2,8 +2,18 @@
 //!
 //! Only this module chooses between them. [`Level::choose`] looks at the CPU once; the environment variable
 //! `BELTWRIGHT_KERNELS` forces a level by name.
+#![allow(unsafe_code)]
 
+#[cfg(target_arch = "x86_64")]
+mod avx2;
+#[cfg(target_arch = "x86_64")]
+mod avx512;
 mod scalar;
+#[cfg(test)]
+mod tests;
+mod view;
+#[cfg(target_arch = "x86_64")]
+mod wide;
 
 use std::ops::Range;
 
@@ -13,6 +23,10 @@ use super::element::Span;
 
 /// The environment variable that forces a level.
 const FORCE: &str = "BELTWRIGHT_KERNELS";
+
+/// Bytes of the nearest data cache that a kernel may count on.
+#[cfg(target_arch = "x86_64")]
+const NEAREST_CACHE: usize = 40 * 1024;
 
 /// Which of two values wins.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -84,6 +98,8 @@ pub(crate) struct Job {
     pub height_px: usize,
     /// The window.
     pub span: Span,
+    /// The picture's row with which the source begins.
+    pub src_top: usize,
     /// The first block.
     pub first: usize,
     /// How many blocks.
@@ -97,8 +113,8 @@ struct Block {
     width_px: usize,
     /// Rows of a whole block.
     size: usize,
-    /// Its first row in the picture.
-    top: usize,
+    /// Its first row in the source.
+    src: usize,
     /// Its rows inside the picture.
     rows_in: usize,
     /// Its first rows whose windows are centred above the picture and which yield nothing.
@@ -107,6 +123,8 @@ struct Block {
     end: usize,
     /// Where the first yielded row goes in the job's output.
     out: usize,
+    /// Whether no block comes after it, so that nobody needs its suffix.
+    is_last: bool,
 }
 
 impl Job {
@@ -125,13 +143,14 @@ impl Job {
             Block {
                 width_px: self.width_px,
                 size,
-                top,
+                src: top - self.src_top,
                 rows_in: self.height_px.saturating_sub(top).min(size),
                 skip: self.span.after.saturating_sub(top).min(size),
                 end: (self.height_px + self.span.after)
                     .saturating_sub(top)
                     .min(size),
                 out: top.saturating_sub(self.span.after).saturating_sub(start),
+                is_last: top + size >= self.height_px + self.span.after,
             }
         })
     }
@@ -168,21 +187,43 @@ pub struct Level(Kind);
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 enum Kind {
     Scalar,
+    #[cfg(target_arch = "x86_64")]
+    Avx2,
+    #[cfg(target_arch = "x86_64")]
+    Avx512,
 }
 
 impl Kind {
     /// From the plainest to the fastest.
-    const ALL: &[Self] = &[Self::Scalar];
+    const ALL: &[Self] = &[
+        Self::Scalar,
+        #[cfg(target_arch = "x86_64")]
+        Self::Avx2,
+        #[cfg(target_arch = "x86_64")]
+        Self::Avx512,
+    ];
 
     fn name(self) -> &'static str {
         match self {
             Self::Scalar => "scalar",
+            #[cfg(target_arch = "x86_64")]
+            Self::Avx2 => "avx2",
+            #[cfg(target_arch = "x86_64")]
+            Self::Avx512 => "avx512",
         }
     }
 
     fn is_here(self) -> bool {
         match self {
             Self::Scalar => true,
+            #[cfg(target_arch = "x86_64")]
+            Self::Avx2 => is_x86_feature_detected!("avx2"),
+            #[cfg(target_arch = "x86_64")]
+            Self::Avx512 => {
+                is_x86_feature_detected!("avx2")
+                    && is_x86_feature_detected!("avx512f")
+                    && is_x86_feature_detected!("avx512bw")
+            }
         }
     }
 }
@@ -192,6 +233,12 @@ macro_rules! dispatch {
     ($level:expr, $name:ident($($argument:expr),*)) => {
         match $level.0 {
             Kind::Scalar => scalar::$name($($argument),*),
+            #[cfg(target_arch = "x86_64")]
+            // SAFETY: a `Level` is only made for a kind whose instructions the CPU was seen to have.
+            Kind::Avx2 => unsafe { avx2::$name($($argument),*) },
+            #[cfg(target_arch = "x86_64")]
+            // SAFETY: as above.
+            Kind::Avx512 => unsafe { avx512::$name($($argument),*) },
         }
     };
 }
@@ -253,10 +300,11 @@ impl Level {
     /// Some blocks of the running extremum down the columns after van Herk 1992 and Gil & Werman 1993: three comparisons
     /// a pixel whatever the window's length.
     ///
-    /// `src` begins at the picture's first row, `dst` at the first row that comes out. With `suffix[o]` the extremum of
+    /// `src` begins with row `src_top`, `dst` at the first row that comes out. With `suffix[o]` the extremum of
     /// rows `o..` of the *previous* block, row `o` of a block ends the window whose extremum is that of `suffix[o + 1]` and
-    /// of rows `0..=o` of this block. Afterwards `suffix` holds the last block's. `suffix` has one row more than the window,
-    /// for the kernel's own use. Rows outside the picture are ignored.
+    /// of rows `0..=o` of this block. Afterwards `suffix` holds that of the last block, arranged as the kernel likes, unless
+    /// it was the picture's last. At first it holds neutral values only. It has one row more than the window, for the
+    /// kernel's own use, and rows of [`suffix_stride`] bytes. Rows outside the picture are ignored.
     pub(crate) fn slide(self, op: Extremum, job: Job, src: Rows, dst: RowsMut, suffix: RowsMut) {
         dispatch!(self, slide(op, job, src, dst, suffix));
     }
@@ -286,6 +334,11 @@ impl Level {
     pub(crate) fn count(self, row: &[u8], counts: &mut Counts) {
         scalar::count(row, counts);
     }
+}
+
+/// The length of a row of the suffix buffer for pictures of this width: whole vectors of every level.
+pub(crate) fn suffix_stride(width_px: usize) -> usize {
+    width_px.next_multiple_of(64)
 }
 
 fn names() -> String {

@@ -5,7 +5,7 @@ use super::{Block, Counts, Extremum, Job, Rows, RowsMut};
 /// See [`super::Level::slide`].
 pub(super) fn slide(op: Extremum, job: Job, src: Rows, mut dst: RowsMut, mut suffix: RowsMut) {
     for block in job.blocks() {
-        let src = src.from(block.top);
+        let src = src.from(block.src);
         yield_rows(op, block, src, dst.from(block.out), &mut suffix);
         extend_suffix(op, block, src, &mut suffix);
     }
@@ -118,4 +118,9 @@ pub(super) fn count(row: &[u8], counts: &mut Counts) {
     for &p in rest {
         a[p as usize] += 1;
     }
+}
+
+#[cfg(test)]
+mod tests {
+    crate::stage::kernels::tests::stamp!("scalar");
 }

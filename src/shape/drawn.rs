@@ -1,0 +1,134 @@
+//! Drawn parts for tests: polygons with flaws, at any pose, sampled at pixel centres.
+
+use std::f64::consts::TAU;
+
+use super::{Bitmap, Pose, Silhouette};
+
+/// Polygons around (0, 0) in px, joined by the even-odd rule.
+#[derive(Clone, Debug)]
+pub(crate) struct Outline {
+    rings: Vec<Vec<(f64, f64)>>,
+    reach: f64,
+}
+
+/// A flaw in the outline's own coordinates.
+#[derive(Clone, Copy, Debug)]
+pub(crate) enum Flaw {
+    /// A disc that is cut out.
+    Bite { x: f64, y: f64, radius: f64 },
+    /// A disc that is added.
+    Burr { x: f64, y: f64, radius: f64 },
+    /// Everything farther than `at` in this direction is cut off.
+    Broken { angle: f64, at: f64 },
+}
+
+impl Outline {
+    fn new(rings: Vec<Vec<(f64, f64)>>) -> Self {
+        let corners = rings.iter().flatten();
+        let reach = corners.map(|&(x, y)| x.hypot(y)).fold(0.0, f64::max);
+        Self { rings, reach }
+    }
+
+    fn round(x: f64, y: f64, radius: f64) -> Vec<(f64, f64)> {
+        let corner = |i| TAU * f64::from(i) / 180.0;
+        let corners = (0..180).map(corner);
+        corners.map(|a: f64| (x + radius * a.cos(), y + radius * a.sin())).collect()
+    }
+
+    pub(crate) fn disc(radius: f64) -> Self {
+        Self::new(vec![Self::round(0.0, 0.0, radius)])
+    }
+
+    pub(crate) fn polygon(corners: &[(f64, f64)]) -> Self {
+        Self::new(vec![corners.to_vec()])
+    }
+
+    /// Five points; the inner corners lie at half the radius.
+    pub(crate) fn star(radius: f64) -> Self {
+        let corner = |i: u32| {
+            let (sin, cos) = (TAU * f64::from(i) / 10.0).sin_cos();
+            let radius = if i.is_multiple_of(2) { radius } else { 0.5 * radius };
+            (radius * cos, radius * sin)
+        };
+        Self::new(vec![(0..10).map(corner).collect()])
+    }
+
+    /// A ring with a tab that sits beside its middle line, so that it has a face.
+    pub(crate) fn gasket(radius: f64) -> Self {
+        let tab = [(0.90, 0.05), (1.25, 0.05), (1.25, 0.40), (0.80, 0.40)];
+        let mut outer = Self::round(0.0, 0.0, radius);
+        // Between the ring's corners at which the tab's sides leave it.
+        let angle = |(x, y): (f64, f64)| f64::atan2(y, x);
+        let inside = |&(x, y): &(f64, f64)| angle((x, y)) < 0.06 || angle((x, y)) > 0.40;
+        outer.retain(inside);
+        let at = outer.iter().position(|&p| angle(p) > 0.40 && angle(p) < 0.5).unwrap();
+        let tab = tab.map(|(x, y)| (x * radius, y * radius));
+        outer.splice(at..at, tab[..3].iter().copied());
+        Self::new(vec![outer, Self::round(0.0, 0.0, 0.55 * radius)])
+    }
+
+    pub(crate) fn has(&self, x: f64, y: f64) -> bool {
+        let crossings = |ring: &Vec<(f64, f64)>| {
+            let next = ring.iter().cycle().skip(1);
+            ring.iter()
+                .zip(next)
+                .filter(|&(a, b)| {
+                    (a.1 > y) != (b.1 > y) && x < a.0 + (y - a.1) / (b.1 - a.1) * (b.0 - a.0)
+                })
+                .count()
+        };
+        self.rings.iter().map(crossings).sum::<usize>() % 2 == 1
+    }
+
+    fn has_with(&self, x: f64, y: f64, flaws: &[Flaw]) -> bool {
+        let within = |u: f64, v: f64, radius: f64| (x - u).hypot(y - v) <= radius;
+        flaws.iter().fold(self.has(x, y), |has, &flaw| match flaw {
+            Flaw::Bite { x, y, radius } => has && !within(x, y, radius),
+            Flaw::Burr { x, y, radius } => has || within(x, y, radius),
+            Flaw::Broken { angle, at } => has && x * angle.cos() + y * angle.sin() <= at,
+        })
+    }
+
+    /// The outline with its (0, 0) at the pose, in a picture of this size.
+    pub(crate) fn draw(&self, pose: Pose, flaws: &[Flaw], size: (usize, usize)) -> Bitmap {
+        let mut picture = Bitmap::new(size.0, size.1);
+        self.add_to(&mut picture, pose, flaws);
+        picture
+    }
+
+    pub(crate) fn add_to(&self, picture: &mut Bitmap, pose: Pose, flaws: &[Flaw]) {
+        let (sin, cos) = pose.angle_deg.to_radians().sin_cos();
+        for y in 0..picture.height_px() {
+            for x in 0..picture.width_px() {
+                let (dx, dy) = (x as f64 - pose.x_px, y as f64 - pose.y_px);
+                // Beyond the farthest corner there are at most burrs.
+                if dx.hypot(dy) > 1.3 * self.reach {
+                    continue;
+                }
+                let (u, v) = (cos * dx + sin * dy, cos * dy - sin * dx);
+                if self.has_with(if pose.flipped { -u } else { u }, v, flaws) {
+                    picture.insert(x, y);
+                }
+            }
+        }
+    }
+}
+
+/// The outline as it would be taught from very many parts, and where its (0, 0) lies in it.
+pub(crate) fn silhouette(outline: &Outline, mm_per_px: f64) -> (Silhouette, (f64, f64)) {
+    let half = outline.reach.ceil() as usize + 3;
+    let side = 2 * half + 1;
+    let share = |i: usize| {
+        let (x, y) = ((i % side) as f64 - half as f64, (i / side) as f64 - half as f64);
+        let offset = |k: i32| (f64::from(k) + 0.5) / 8.0 - 0.5;
+        let covered = (0..64).filter(|k| outline.has(x + offset(k % 8), y + offset(k / 8)));
+        (covered.count() as f64 / 64.0 * 255.0).round() as u8
+    };
+    let whole = Silhouette {
+        width_px: side,
+        height_px: side,
+        mm_per_px,
+        share: (0..side * side).map(share).collect(),
+    };
+    (whole, (half as f64, half as f64))
+}
