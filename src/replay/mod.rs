@@ -5,6 +5,7 @@ mod artist;
 mod drive;
 mod outcome;
 mod pictures;
+pub mod report;
 mod score;
 mod summary;
 
