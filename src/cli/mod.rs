@@ -16,6 +16,7 @@ mod draw;
 mod files;
 mod interrupt;
 mod replay;
+mod report;
 mod results;
 mod station;
 

@@ -2,7 +2,7 @@
 
 use image::{GrayImage, Luma, RgbImage};
 
-use super::pictures::{Sketch, draw_part};
+use super::pictures::{Marks, Sketch, draw_part};
 use crate::belt::Part;
 use crate::frames::{Frame, Gray};
 use crate::inspect::{common, limits};
@@ -43,13 +43,16 @@ impl<'a> Artist<'a> {
             return blank(picture, self.geometry, &words);
         };
         let runs = &scene.runs[region.runs.clone()];
-        let marks = part
-            .judged
-            .map(|judged| self.judge.marks(region, runs, &judged));
+        let drawing = part.judged.map(|judged| self.judge.drawing(region, runs, &judged));
+        let marks = part.judged.zip(drawing.as_ref()).map(|(judged, drawing)| Marks {
+            drawing,
+            missing: judged.missing,
+            excess: judged.excess,
+        });
         draw_part(&Sketch {
             picture,
             part_px: box_px(region),
-            marks: marks.as_ref(),
+            marks,
             scale: self.geometry.scale,
             words: &words,
         })

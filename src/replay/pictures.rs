@@ -15,17 +15,7 @@ use embedded_graphics::text::{Baseline, Text};
 use image::{Rgb, RgbImage};
 
 use crate::frames::Gray;
-pub struct Marks {
-    pub left_px: i32,
-    pub top_px: i32,
-    pub width_px: usize,
-    pub height_px: usize,
-    pub taught: Vec<bool>,
-    pub missing: Vec<bool>,
-    pub excess: Vec<bool>,
-    pub missing_at: Option<(i32, i32)>,
-    pub excess_at: Option<(i32, i32)>,
-}
+use crate::shape::{Bitmap, Depth, Drawing};
 use crate::units::Scale;
 
 /// Picture pixels for one camera pixel.
@@ -77,14 +67,25 @@ trait Sheet: DrawTarget<Color = Rgb888, Error = Infallible> {}
 
 impl<T: DrawTarget<Color = Rgb888, Error = Infallible>> Sheet for T {}
 
+/// What is marked on a part.
+#[derive(Clone, Copy)]
+pub struct Marks<'a> {
+    /// Pixel by pixel.
+    pub drawing: &'a Drawing,
+    /// The deepest bite.
+    pub missing: Depth,
+    /// The farthest burr.
+    pub excess: Depth,
+}
+
 /// What is drawn of one part.
 pub struct Sketch<'a> {
     /// The region of interest of the frame.
     pub picture: Gray<'a>,
     /// Box of the part in it: left, top, right, bottom (the last two exclusive).
     pub part_px: [usize; 4],
-    /// Taught outline and flaws; `None` for a part that was never seen whole.
-    pub marks: Option<&'a Marks>,
+    /// Taught outline and flaws with the worst of each; `None` for a part that was never seen whole.
+    pub marks: Option<Marks<'a>>,
     /// Size of a camera pixel.
     pub scale: Scale,
     /// Lines of text below.
@@ -114,12 +115,12 @@ pub fn draw_part(sketch: &Sketch<'_>) -> RgbImage {
 /// The part and the taught shape with some belt around them, inside the picture: left, top, right, bottom.
 fn shown_px(sketch: &Sketch<'_>) -> [usize; 4] {
     let [mut left, mut top, mut right, mut bottom] = sketch.part_px;
-    if let Some(marks) = sketch.marks {
-        let end = |start: i32, length: usize| (start.max(0) as usize) + length;
-        left = left.min(marks.left_px.max(0) as usize);
-        top = top.min(marks.top_px.max(0) as usize);
-        right = right.max(end(marks.left_px, marks.width_px));
-        bottom = bottom.max(end(marks.top_px, marks.height_px));
+    if let Some(Marks { drawing, .. }) = sketch.marks {
+        let start = |at: i32| at.max(0) as usize;
+        left = left.min(start(drawing.origin.0));
+        top = top.min(start(drawing.origin.1));
+        right = right.max(start(drawing.origin.0) + drawing.taught.width_px());
+        bottom = bottom.max(start(drawing.origin.1) + drawing.taught.height_px());
     }
     let picture = &sketch.picture;
     [
@@ -147,9 +148,9 @@ fn enlarge(
     }
 }
 
-/// Places marks (camera pixels) on the enlarged crop.
+/// Places a drawing (camera pixels) on the enlarged crop.
 struct Placed<'a> {
-    marks: &'a Marks,
+    drawing: &'a Drawing,
     left: i64,
     top: i64,
 }
@@ -157,8 +158,8 @@ struct Placed<'a> {
 impl Placed<'_> {
     fn corner(&self, x: usize, y: usize) -> Point {
         let zoom = ZOOM as i64;
-        let x = (i64::from(self.marks.left_px) + x as i64 - self.left) * zoom;
-        let y = (i64::from(self.marks.top_px) + y as i64 - self.top) * zoom;
+        let x = (i64::from(self.drawing.origin.0) + x as i64 - self.left) * zoom;
+        let y = (i64::from(self.drawing.origin.1) + y as i64 - self.top) * zoom;
         Point::new(x as i32, y as i32)
     }
 
@@ -170,27 +171,26 @@ impl Placed<'_> {
     }
 }
 
-fn draw_marks(canvas: &mut impl Sheet, marks: &Marks, left: usize, top: usize) {
+fn draw_marks(canvas: &mut impl Sheet, marks: Marks<'_>, left: usize, top: usize) {
     let placed = Placed {
-        marks,
+        drawing: marks.drawing,
         left: left as i64,
         top: top as i64,
     };
-    hatch(canvas, &placed, &marks.missing, MISSING, 1);
-    hatch(canvas, &placed, &marks.excess, EXCESS, -1);
+    hatch(canvas, &placed, &marks.drawing.missing, MISSING, 1);
+    hatch(canvas, &placed, &marks.drawing.excess, EXCESS, -1);
     outline(canvas, &placed);
-    for (at, colour) in [(marks.missing_at, MISSING), (marks.excess_at, EXCESS)] {
-        if let Some(at) = at {
+    for (depth, colour) in [(marks.missing, MISSING), (marks.excess, EXCESS)] {
+        if let Some(at) = depth.at {
             ring(canvas, placed.middle(at), colour);
         }
     }
 }
 
-/// Slanted lines over every pixel of `mask`; `slant` is 1 or -1.
-fn hatch(canvas: &mut impl Sheet, placed: &Placed<'_>, mask: &[bool], colour: Rgb888, slant: i32) {
-    let width = placed.marks.width_px;
-    for at in (0..mask.len()).filter(|&at| mask[at]) {
-        let corner = placed.corner(at % width, at / width);
+/// Slanted lines over every pixel of `set`; `slant` is 1 or -1.
+fn hatch(canvas: &mut impl Sheet, placed: &Placed<'_>, set: &Bitmap, colour: Rgb888, slant: i32) {
+    for (x, y) in set.pixels() {
+        let corner = placed.corner(x, y);
         for step in 0..(ZOOM * ZOOM) as i32 {
             let point = corner + Point::new(step % ZOOM as i32, step / ZOOM as i32);
             if (point.x + slant * point.y).rem_euclid(5) < 2 {
@@ -202,18 +202,16 @@ fn hatch(canvas: &mut impl Sheet, placed: &Placed<'_>, mask: &[bool], colour: Rg
 
 /// Lines between pixels of which just one belongs to the taught shape.
 fn outline(canvas: &mut impl Sheet, placed: &Placed<'_>) {
-    let marks = placed.marks;
-    let (width, height) = (marks.width_px, marks.height_px);
-    let taught = |x: usize, y: usize| x < width && y < height && marks.taught[y * width + x];
+    let taught = &placed.drawing.taught;
+    let has = |x: usize, y: usize| taught.has(x as i32, y as i32);
     let style = PrimitiveStyle::with_stroke(OUTLINE, 1);
-    for y in 0..=height {
-        for x in 0..=width {
-            let here = taught(x, y);
-            if here != (x > 0 && taught(x - 1, y)) {
+    for y in 0..=taught.height_px() {
+        for x in 0..=taught.width_px() {
+            if has(x, y) != (x > 0 && has(x - 1, y)) {
                 let line = Line::new(placed.corner(x, y), placed.corner(x, y + 1));
                 let Ok(()) = line.into_styled(style).draw(canvas);
             }
-            if here != (y > 0 && taught(x, y - 1)) {
+            if has(x, y) != (y > 0 && has(x, y - 1)) {
                 let line = Line::new(placed.corner(x, y), placed.corner(x + 1, y));
                 let Ok(()) = line.into_styled(style).draw(canvas);
             }
