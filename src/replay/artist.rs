@@ -1,14 +1,14 @@
 //! Finds a part again in the frame that speaks for it, and draws it with its marks and figures.
 
-use image::{GrayImage, Luma, RgbImage};
+use image::RgbImage;
 
 use super::pictures::{Marks, Sketch, draw_part};
 use crate::belt::Part;
 use crate::frames::{Frame, Gray};
 use crate::inspect::{common, limits};
 use crate::settings::{Geometry, Settings};
-use crate::shape::{Judge, Judged, Silhouette};
-use crate::stage::{Level, Plan, Region, Stage};
+use crate::shape::{Drawing, Judge, Judged, Silhouette};
+use crate::stage::{Level, Plan, Region, Stage, Steps};
 
 /// Stage and judge once more, for pictures.
 pub struct Artist<'a> {
@@ -33,54 +33,56 @@ impl<'a> Artist<'a> {
         }
     }
 
-    /// The part as `frame` shows it; `frame` is the one that was captured at `part.spoken_us`.
-    pub fn draw(&mut self, frame: &Frame, part: &Part) -> RgbImage {
+    /// Looks for the part in `frame`, the one that was captured at `part.spoken_us`.
+    pub fn find<'f>(&mut self, frame: &'f Frame, part: &Part) -> Sight<'f> {
         let picture = frame.gray().window(self.geometry.window);
         let place = Place::of(part, frame, self.settings);
         let scene = self.stage.run(picture);
-        let words = words(part, self.settings);
-        let Some(region) = place.nearest(&scene.regions, &self.geometry) else {
-            return blank(picture, self.geometry, &words);
-        };
-        let runs = &scene.runs[region.runs.clone()];
-        let drawing = part.judged.map(|judged| self.judge.drawing(region, runs, &judged));
-        let marks = part.judged.zip(drawing.as_ref()).map(|(judged, drawing)| Marks {
-            drawing,
-            missing: judged.missing,
-            excess: judged.excess,
+        let region = place.nearest(&scene.regions, &self.geometry);
+        let drawing = region.zip(part.judged).map(|(region, judged)| {
+            let runs = &scene.runs[region.runs.clone()];
+            self.judge.drawing(region, runs, &judged)
         });
-        draw_part(&Sketch {
+        Sight {
             picture,
-            part_px: box_px(region),
-            marks,
+            part_px: region.map(box_px),
+            drawing,
+        }
+    }
+
+    /// The part as `frame` shows it, with its marks and figures; `frame` as for [`Artist::find`].
+    pub fn draw(&mut self, frame: &Frame, part: &Part) -> RgbImage {
+        let sight = self.find(frame, part);
+        let words = words(part, self.settings);
+        let marks = part.judged.zip(sight.drawing.as_ref());
+        let all = [0, 0, sight.picture.width_px, sight.picture.height_px];
+        draw_part(&Sketch {
+            picture: sight.picture,
+            part_px: sight.part_px.unwrap_or(all),
+            marks: marks.map(|(judged, drawing)| Marks {
+                drawing,
+                missing: judged.missing,
+                excess: judged.excess,
+            }),
             scale: self.geometry.scale,
             words: &words,
         })
     }
 
-    /// What each step made of the part and half its size of belt around it; `frame` as for [`Artist::draw`]. Empty when
-    /// nothing is found any more.
-    pub fn steps(&mut self, frame: &Frame, part: &Part) -> Vec<(&'static str, GrayImage)> {
-        let picture = frame.gray().window(self.geometry.window);
-        let place = Place::of(part, frame, self.settings);
-        let regions = &self.stage.run(picture).regions;
-        let Some(part_px) = place.nearest(regions, &self.geometry).map(box_px) else {
-            return Vec::new();
-        };
-        let shown = Crop::around(part_px, picture);
-        let steps = self.stage.steps(picture);
-        let step = |pixels| Gray {
-            pixels,
-            stride_px: picture.width_px,
-            ..picture
-        };
-        vec![
-            ("gray", shown.cut(picture)),
-            ("top-hat", shown.cut(step(&steps.top_hat))),
-            ("binary", shown.cut(step(&steps.binary))),
-            ("filled", shown.cut(step(&steps.filled))),
-        ]
+    /// What each step makes of `picture`, a region of interest.
+    pub fn steps(&mut self, picture: Gray<'_>) -> Steps {
+        self.stage.steps(picture)
     }
+}
+
+/// A part found again.
+pub struct Sight<'f> {
+    /// The region of interest.
+    pub picture: Gray<'f>,
+    /// The part's box in it: left, top, right, bottom (the last two exclusive); `None` if nothing is found any more.
+    pub part_px: Option<[usize; 4]>,
+    /// Taught outline and flaws; `None` for a part that was never seen whole.
+    pub drawing: Option<Drawing>,
 }
 
 fn box_px(region: &Region) -> [usize; 4] {
@@ -108,51 +110,8 @@ impl<'a> Place<'a> {
             let across_mm = geometry.below_top_mm(region.centroid_y + 0.5);
             (along_mm - self.part.along_mm).hypot(across_mm - self.part.across_mm)
         };
-        regions
-            .iter()
-            .min_by(|a, b| apart(a).total_cmp(&apart(b)))
+        regions.iter().min_by(|a, b| apart(a).total_cmp(&apart(b)))
     }
-}
-
-/// A piece of a picture.
-#[derive(Clone, Copy)]
-struct Crop {
-    left: usize,
-    top: usize,
-    width: usize,
-    height: usize,
-}
-
-impl Crop {
-    /// A part and half its size around it, as far as the picture goes.
-    fn around([left, top, right, bottom]: [usize; 4], picture: Gray<'_>) -> Self {
-        let around = (right - left).max(bottom - top) / 2;
-        let (left, top) = (left.saturating_sub(around), top.saturating_sub(around));
-        Self {
-            left,
-            top,
-            width: (right + around).min(picture.width_px) - left,
-            height: (bottom + around).min(picture.height_px) - top,
-        }
-    }
-
-    fn cut(self, picture: Gray<'_>) -> GrayImage {
-        GrayImage::from_fn(self.width as u32, self.height as u32, |x, y| {
-            Luma([picture.row(self.top + y as usize)[self.left + x as usize]])
-        })
-    }
-}
-
-/// A frame in which nothing is found any more: all of it, with the words.
-fn blank(picture: Gray<'_>, geometry: Geometry, words: &[String]) -> RgbImage {
-    let part_px = [0, 0, picture.width_px, picture.height_px];
-    draw_part(&Sketch {
-        picture,
-        part_px,
-        marks: None,
-        scale: geometry.scale,
-        words,
-    })
 }
 
 fn words(part: &Part, settings: &Settings) -> Vec<String> {
