@@ -32,9 +32,7 @@ impl Patches {
     /// How many patches there are.
     pub(super) fn count(&mut self, set: &Bitmap, joined: Joined) -> usize {
         self.label(set, joined);
-        (0..self.runs.len())
-            .filter(|&i| self.runs[i].parent == i)
-            .count()
+        (0..self.runs.len()).filter(|&i| self.runs[i].parent == i).count()
     }
 
     /// Takes every 8-connected patch of fewer than `below` pixels out of `set`.
