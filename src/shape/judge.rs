@@ -75,8 +75,8 @@ impl Judge {
     }
 
     /// The shapes in the order in which they came.
-    pub fn models(&self) -> impl ExactSizeIterator<Item = &Model> {
-        self.shapes.iter().map(|(model, _)| model)
+    pub fn shapes(&self) -> &[(Model, Limits)] {
+        &self.shapes
     }
 
     /// Judges one whole region; `runs` are its own, sorted by row, then column.
