@@ -3,11 +3,11 @@
 use image::RgbImage;
 
 use super::pictures::{Marks, Sketch, draw_part};
-use crate::belt::Part;
+use crate::belt::{Part, View};
 use crate::frames::{Frame, Gray};
 use crate::inspect::{common, limits};
 use crate::settings::{Geometry, Settings};
-use crate::shape::{Judge, Judged, Silhouette};
+use crate::shape::{Judge, Judged, Silhouette, Verdict};
 use crate::stage::{Level, Plan, Region, Stage};
 
 /// Stage and judge once more, for pictures.
@@ -33,29 +33,55 @@ impl<'a> Artist<'a> {
         }
     }
 
-    /// The part as `frame` shows it; `frame` is the one that was captured at `part.spoken_us`.
-    pub fn draw(&mut self, frame: &Frame, part: &Part) -> RgbImage {
+    /// A part as `frame` shows it; `frame` is the one that was captured at `part.spoken_us`.
+    pub fn draw_part(&mut self, frame: &Frame, part: &Part) -> RgbImage {
+        let mut title = format!("part {}: {}", part.number, part.verdict);
+        if !part.reasons.is_empty() {
+            title = format!("{title} ({})", part.reasons);
+        }
+        self.draw(frame, (part.along_mm, part.across_mm), part.judged, title)
+    }
+
+    /// One view of a part in `frame`.
+    pub fn draw_view(&mut self, frame: &Frame, view: &View) -> RgbImage {
+        let title = match view.judged {
+            Some(judged) if judged.reasons.is_empty() => Verdict::Keep.to_string(),
+            Some(judged) => format!("{} ({})", Verdict::Reject, judged.reasons),
+            None => "not gauged".to_owned(),
+        };
+        self.draw(frame, (view.along_mm, view.across_mm), view.judged, title)
+    }
+
+    /// The region nearest to `at` (along and across the belt) with what was judged of it.
+    fn draw(
+        &mut self,
+        frame: &Frame,
+        at: (f64, f64),
+        judged: Option<Judged>,
+        title: String,
+    ) -> RgbImage {
+        let speed_mm_s = self.settings.belt.speed_mm_s;
         let belt_mm = frame
             .belt_mm
-            .unwrap_or_else(|| frame.captured_us.as_seconds() * self.settings.belt.speed_mm_s);
+            .unwrap_or(frame.captured_us.as_seconds() * speed_mm_s);
         let picture = frame.gray().window(self.geometry.window);
         let scene = self.stage.run(picture);
         let apart = |region: &Region| {
             let along_mm = belt_mm - self.geometry.behind_upstream_mm(region.centroid_x + 0.5);
             let across_mm = self.geometry.below_top_mm(region.centroid_y + 0.5);
-            (along_mm - part.along_mm).hypot(across_mm - part.across_mm)
+            (along_mm - at.0).hypot(across_mm - at.1)
         };
         let nearest = scene
             .regions
             .iter()
             .min_by(|a, b| apart(a).total_cmp(&apart(b)));
-        let words = words(part, self.settings);
+        let words = words(title, judged, self.settings);
         let Some(region) = nearest else {
             return blank(picture, self.geometry, &words);
         };
         let runs = &scene.runs[region.runs.clone()];
-        let drawing = part.judged.map(|judged| self.judge.drawing(region, runs, &judged));
-        let marks = part.judged.zip(drawing.as_ref()).map(|(judged, drawing)| Marks {
+        let drawing = judged.map(|judged| self.judge.drawing(region, runs, &judged));
+        let marks = judged.zip(drawing.as_ref()).map(|(judged, drawing)| Marks {
             drawing,
             missing: judged.missing,
             excess: judged.excess,
@@ -82,14 +108,11 @@ fn blank(picture: Gray<'_>, geometry: Geometry, words: &[String]) -> RgbImage {
     })
 }
 
-fn words(part: &Part, settings: &Settings) -> Vec<String> {
-    let mut words = vec![format!("part {}: {}", part.number, part.verdict)];
-    if !part.reasons.is_empty() {
-        words[0] = format!("{} ({})", words[0], part.reasons);
-    }
-    match part.judged {
+fn words(title: String, judged: Option<Judged>, settings: &Settings) -> Vec<String> {
+    let mut words = vec![title];
+    match judged {
         Some(judged) => words.extend(figures(&judged, settings)),
-        None => words.push("never seen whole".to_owned()),
+        None => words.push("not seen whole: the picture's edge cuts it".to_owned()),
     }
     words
 }

@@ -32,7 +32,9 @@ impl Patches {
     /// How many patches there are.
     pub(super) fn count(&mut self, set: &Bitmap, joined: Joined) -> usize {
         self.label(set, joined);
-        (0..self.runs.len()).filter(|&i| self.runs[i].parent == i).count()
+        (0..self.runs.len())
+            .filter(|&i| self.runs[i].parent == i)
+            .count()
     }
 
     /// How many pixels each patch has, in the order of their first pixels.

@@ -26,7 +26,11 @@ impl Symmetry {
 
     /// Angles are told apart from 0 up to this.
     pub fn span_deg(self) -> f64 {
-        if self.turns == 0 { 0.0 } else { 360.0 / f64::from(self.turns) }
+        if self.turns == 0 {
+            0.0
+        } else {
+            360.0 / f64::from(self.turns)
+        }
     }
 
     /// The smallest of the angles that look the same as this one.
@@ -51,11 +55,15 @@ impl Symmetry {
             ..model.identity()
         };
         // Turns that have nothing to do with one another or with the angles of corners.
-        let round = [17.3, 47.9, 77.7, 101.3, 137.5].iter().all(|&angle| same.at(turned(angle)));
+        let round = [17.3, 47.9, 77.7, 101.3, 137.5]
+            .iter()
+            .all(|&angle| same.at(turned(angle)));
         let turns = if round {
             0
         } else {
-            let found = (2..=MOST_TURNS).rev().find(|&n| same.at(turned(360.0 / f64::from(n))));
+            let found = (2..=MOST_TURNS)
+                .rev()
+                .find(|&n| same.at(turned(360.0 / f64::from(n))));
             found.unwrap_or(1)
         };
         let mirror = round || same.anywhere_mirrored(turns);
@@ -87,7 +95,8 @@ impl<'a> Same<'a> {
     }
 
     fn fit(&mut self, pose: Pose) -> f64 {
-        self.overlay.place(&self.region, &self.runs, self.model, pose);
+        self.overlay
+            .place(&self.region, &self.runs, self.model, pose);
         self.overlay.fit()
     }
 
