@@ -25,7 +25,7 @@ fn yield_rows(op: Extremum, block: Block, src: Rows, mut dst: RowsMut, suffix: &
         if o >= block.skip {
             let out = dst.row(o - block.skip, width);
             out.copy_from_slice(prefix);
-            if o + 1 < block.size {
+            if o + 1 < block.size && !block.is_first {
                 join(op, out, &suffix[(o + 1) * stride..][..width]);
             }
         }

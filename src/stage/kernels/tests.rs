@@ -179,8 +179,9 @@ fn whole(width_px: usize, height_px: usize, span: Span) -> Job {
     }
 }
 
-fn suffix(op: Extremum, width: usize, span: Span) -> Vec<u8> {
-    vec![op.neutral(); (span.size() + 1) * suffix_stride(width)]
+/// A suffix buffer; what it holds at first does not matter.
+fn suffix(width: usize, span: Span) -> Vec<u8> {
+    vec![MARK; (span.size() + 1) * suffix_stride(width)]
 }
 
 /// The extremum over a window by its definition.
@@ -209,7 +210,7 @@ pub(super) fn slide(level: Level) {
             let source = Source::new(width, height, 7 * width + i);
             for op in [Extremum::Least, Extremum::Greatest] {
                 let mut target = Target::new(width, height, 3 * width + i);
-                let mut suffix = suffix(op, width, span);
+                let mut suffix = suffix(width, span);
                 let suffix = RowsMut {
                     pixels: &mut suffix,
                     stride_px: suffix_stride(width),
@@ -247,7 +248,7 @@ pub(super) fn slide_in_steps(level: Level) {
         ] {
             let source = Source::new(width, height, width);
             let mut target = Target::new(width, height, width);
-            let mut suffix = suffix(op, width, span);
+            let mut suffix = suffix(width, span);
             let all = whole(width, height, span);
             for first in (0..all.count).step_by(2) {
                 let job = Job {
