@@ -159,9 +159,6 @@ impl Job {
     }
 }
 
-/// Gray values counted in four tables, so that equal neighbours do not wait for each other.
-pub(crate) type Counts = [[u32; 256]; 4];
-
 /// Why a level cannot be used.
 #[derive(Clone, Debug, Error, PartialEq, Eq)]
 pub enum KernelError {
@@ -331,11 +328,6 @@ impl Level {
     /// [`Level::subtract`] and [`Level::mark`] in one.
     pub(crate) fn mark_difference(self, upper: &[u8], lower: &[u8], level: u8, bits: &mut [u64]) {
         dispatch!(self, mark_difference(upper, lower, level, bits));
-    }
-
-    /// Adds the pixels of `row` to the tables.
-    pub(crate) fn count(self, row: &[u8], counts: &mut Counts) {
-        scalar::count(row, counts);
     }
 }
 
