@@ -1,15 +1,15 @@
 //! `draw`: a recording from a seed, labelled from the drawn geometry.
 
-use std::fmt::Write as _;
 use std::path::{Path, PathBuf};
 
 use anyhow::Context;
+use serde::Serialize;
 
 use super::Outcome;
 use crate::frames::drawn::{Drawing, DrawnBelt, Scene, Truth, mask, truths};
 use crate::frames::{Frame, FrameSource};
 use crate::recording::{Label, LabelWriter, Writer};
-use crate::settings::{self, Settings};
+use crate::settings::{self, Belt, Camera, Settings};
 use crate::shape::Verdict;
 use crate::units::Micros;
 
@@ -23,10 +23,10 @@ pub(super) struct Args {
     #[arg(long, value_name = "FILE.toml")]
     settings: PathBuf,
     /// How many parts.
-    #[arg(long, default_value_t = 30)]
+    #[arg(long, default_value_t = 30, value_parser = clap::value_parser!(u64).range(1..=1 << 40))]
     parts: u64,
     /// The same seed and settings give the same recording.
-    #[arg(long, default_value_t = 1)]
+    #[arg(long, default_value_t = 1, value_parser = clap::value_parser!(u64).range(0..=1 << 62))]
     seed: u64,
     /// When the first frame is captured, in microseconds.
     #[arg(long, value_name = "US", default_value_t = 0, value_parser = clap::value_parser!(i64).range(0..=1 << 52))]
@@ -56,15 +56,24 @@ fn draw(args: &Args, settings: &Settings) -> anyhow::Result<()> {
         seed: args.seed,
         first_us: Micros(args.first_us),
     };
+    // Everything that can be refused is, before anything is written.
     let belt = DrawnBelt::new(&drawing, settings)?;
     if let Some(file) = &args.mask {
-        write_mask(args.scene, settings, file)?;
+        anyhow::ensure!(
+            !file.try_exists()?,
+            "{}: there is a file already; name a new one",
+            file.display()
+        );
     }
     if let Some(folder) = &args.out {
+        let notes = notes(&drawing, settings)?;
         let mut recording = Writer::create(folder)?;
-        recording.write_notes(&notes(&drawing, settings))?;
+        recording.write_notes(&notes)?;
         write_truths(&drawing, settings, folder)?;
         write_frames(belt, &mut recording)?;
+    }
+    if let Some(file) = &args.mask {
+        write_mask(args.scene, settings, file)?;
     }
     Ok(())
 }
@@ -106,7 +115,8 @@ const TRUTH_HEADER: [&str; 12] = [
 /// `truth.csv` has a row for every part, `labels.csv` one for everything the camera sees as one thing.
 fn write_truths(drawing: &Drawing, settings: &Settings, folder: &Path) -> anyhow::Result<()> {
     let file = folder.join("truth.csv");
-    let mut table = csv::Writer::from_path(&file)?;
+    let mut table = csv::Writer::from_path(&file)
+        .with_context(|| format!("{}: cannot create it", file.display()))?;
     table.write_record(TRUTH_HEADER)?;
     let mut labels = LabelWriter::create(folder)?;
     let mut thing: Vec<Truth> = Vec::new();
@@ -155,11 +165,9 @@ fn verdict(truth: &Truth) -> Verdict {
 fn label(thing: &[Truth]) -> Label {
     let mean = |of: fn(&Truth) -> f64| thing.iter().map(of).sum::<f64>() / thing.len() as f64;
     let rejected = thing.iter().any(|truth| truth.against.any());
-    let mut note = String::new();
-    for truth in thing {
-        let gap = if note.is_empty() { "" } else { "; " };
-        let _ = write!(note, "{gap}part {}: {}", truth.part, truth.kind.name());
-    }
+    let notes = thing
+        .iter()
+        .map(|truth| format!("part {}: {}", truth.part, truth.kind.name()));
     Label {
         along_mm: mean(|truth| truth.along_mm),
         across_mm: mean(|truth| truth.across_mm),
@@ -168,52 +176,54 @@ fn label(thing: &[Truth]) -> Label {
         } else {
             Verdict::Keep
         },
-        note,
+        note: notes.collect::<Vec<_>>().join("; "),
     }
 }
 
-fn notes(drawing: &Drawing, settings: &Settings) -> String {
-    let (camera, belt) = (&settings.camera, &settings.belt);
-    let shape = settings.shapes.first();
-    let limit = |of: fn(&crate::settings::Shape) -> f64| shape.map_or(f64::NAN, of);
-    format!(
-        "# A drawing, not a camera's recording: `beltwright draw {scene} --parts {parts} --seed {seed} --first-us {first_us}`.\n\
-         # labels.csv and truth.csv follow from the drawn geometry alone. A label stands for what the camera sees as one\n\
-         # thing: two parts that touch have one label, in their middle, and a row each in truth.csv.\n\
-         scene = \"{scene}\"\n\
-         parts = {parts}\n\
-         seed = {seed}\n\
-         first_us = {first_us}\n\
-         \n\
-         [camera]\n\
-         width_px = {width}\n\
-         height_px = {height}\n\
-         mm_per_px = {mm_per_px:?}\n\
-         frames_per_s = {frames_per_s:?}\n\
-         exposure_ms = {exposure_ms:?}\n\
-         \n\
-         [belt]\n\
-         speed_mm_s = {speed:?}\n\
-         travel = \"{travel}\"\n\
-         \n\
-         # The limits by which the labels were decided.\n\
-         [limits]\n\
-         missing_mm = {missing:?}\n\
-         excess_mm = {excess:?}\n",
-        scene = drawing.scene.name(),
-        parts = drawing.parts,
-        seed = drawing.seed,
-        first_us = drawing.first_us.0,
-        width = camera.width_px,
-        height = camera.height_px,
-        mm_per_px = camera.mm_per_px,
-        frames_per_s = camera.frames_per_s,
-        exposure_ms = camera.exposure_ms,
-        speed = belt.speed_mm_s,
-        travel = format!("{:?}", belt.travel).to_lowercase(),
-        missing = limit(|shape| shape.missing_mm),
-        excess = limit(|shape| shape.excess_mm),
-    )
+/// `recording.toml`: how this was drawn, and the limits by which the labels were decided.
+#[derive(Serialize)]
+struct Notes<'a> {
+    scene: &'a str,
+    parts: u64,
+    seed: u64,
+    first_us: i64,
+    limits: Limits,
+    camera: &'a Camera,
+    belt: &'a Belt,
+}
+
+#[derive(Serialize)]
+struct Limits {
+    missing_mm: f64,
+    excess_mm: f64,
+}
+
+const NOTES_HEAD: &str = "\
+# A drawing, not a camera's recording. `beltwright draw` made it from the scene, the number of parts, the seed and the
+# settings below, and makes it again from them. labels.csv and truth.csv follow from the drawn geometry alone. A label
+# stands for what the camera sees as one thing: two parts that touch have one label, in their middle, and a row each in
+# truth.csv. `missing_mm` there is how deep a bite goes, `excess_mm` how far a burr sticks out, both against the shape
+# as it should be.
+";
+
+fn notes(drawing: &Drawing, settings: &Settings) -> anyhow::Result<String> {
+    let shape = settings
+        .shapes
+        .first()
+        .context("the settings have no shape")?;
+    let notes = Notes {
+        scene: drawing.scene.name(),
+        parts: drawing.parts,
+        seed: drawing.seed,
+        first_us: drawing.first_us.0,
+        limits: Limits {
+            missing_mm: shape.missing_mm,
+            excess_mm: shape.excess_mm,
+        },
+        camera: &settings.camera,
+        belt: &settings.belt,
+    };
+    Ok(format!("{NOTES_HEAD}\n{}", toml::to_string(&notes)?))
 }
 
 #[cfg(test)]
@@ -237,8 +247,8 @@ mod tests {
         .unwrap()
     }
 
-    fn args(folder: &Path) -> DrawArgs {
-        DrawArgs {
+    fn args(folder: &Path) -> Args {
+        Args {
             scene: Scene::Gaskets,
             settings: PathBuf::new(),
             parts: 30,
@@ -321,8 +331,10 @@ mod tests {
         assert!(!folder.path().join("drawn").exists());
         args.mask = None;
         draw(&args, &settings()).unwrap();
+        args.mask = Some(folder.path().join("another.png"));
         let again = draw(&args, &settings()).unwrap_err();
         assert!(again.to_string().contains("not empty"), "{again}");
+        assert!(!folder.path().join("another.png").exists());
     }
 
     #[test]
@@ -331,7 +343,7 @@ mod tests {
         #[derive(Debug, Parser)]
         struct Line {
             #[command(flatten)]
-            draw: DrawArgs,
+            draw: Args,
         }
         let parse = |words: &str| Line::try_parse_from(format!("x {words}").split(' '));
         assert!(parse("gaskets --settings s.toml").is_err());

@@ -15,10 +15,12 @@ mod check;
 mod draw;
 mod files;
 mod interrupt;
+mod judge;
 mod replay;
 mod report;
 mod results;
 mod station;
+mod teach;
 
 use std::io::{self, Write};
 
@@ -40,6 +42,8 @@ pub struct Cli {
 enum Command {
     Replay(replay::Args),
     Check(check::Args),
+    Teach(teach::Args),
+    Judge(judge::Args),
     Draw(draw::Args),
 }
 
@@ -69,6 +73,8 @@ impl Cli {
         let outcome = match self.command {
             Command::Replay(args) => args.run(&mut out),
             Command::Check(args) => args.run(&mut out),
+            Command::Teach(args) => args.run(&mut out),
+            Command::Judge(args) => args.run(&mut out),
             Command::Draw(args) => args.run(),
         };
         let flushed = out.flush();

@@ -82,7 +82,7 @@ impl Results<'_> {
             self.recording.read_into(at, &mut frame)?;
             let mut png = Cursor::new(Vec::new());
             artist
-                .draw(&frame, part)
+                .draw_part(&frame, part)
                 .write_to(&mut png, image::ImageFormat::Png)?;
             let reasons = part.reasons.to_string();
             let why = if reasons.is_empty() { "keep" } else { &reasons };

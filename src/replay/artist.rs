@@ -3,11 +3,11 @@
 use image::RgbImage;
 
 use super::pictures::{Marks, Sketch, draw_part};
-use crate::belt::Part;
+use crate::belt::{Part, View};
 use crate::frames::{Frame, Gray};
 use crate::inspect::{common, limits};
 use crate::settings::{Geometry, Settings};
-use crate::shape::{Drawing, Judge, Judged, Silhouette};
+use crate::shape::{Drawing, Judge, Judged, Silhouette, Verdict};
 use crate::stage::{Level, Plan, Region, Stage, Steps};
 
 /// Stage and judge once more, for pictures.
@@ -33,31 +33,83 @@ impl<'a> Artist<'a> {
         }
     }
 
-    /// Looks for the part in `frame`, the one that was captured at `part.spoken_us`.
+    /// A part as `frame` shows it; `frame` is the one that was captured at `part.spoken_us`.
+    pub fn draw_part(&mut self, frame: &Frame, part: &Part) -> RgbImage {
+        let mut title = format!("part {}: {}", part.number, part.verdict);
+        if !part.reasons.is_empty() {
+            title = format!("{title} ({})", part.reasons);
+        }
+        self.draw(frame, (part.along_mm, part.across_mm), part.judged, title)
+    }
+
+    /// One view of a part in `frame`.
+    pub fn draw_view(&mut self, frame: &Frame, view: &View) -> RgbImage {
+        let title = match view.judged {
+            Some(judged) if judged.reasons.is_empty() => Verdict::Keep.to_string(),
+            Some(judged) => format!("{} ({})", Verdict::Reject, judged.reasons),
+            None => "not gauged".to_owned(),
+        };
+        self.draw(frame, (view.along_mm, view.across_mm), view.judged, title)
+    }
+
+    /// Looks for a part in `frame`, the one that was captured at `part.spoken_us`.
     pub fn find<'f>(&mut self, frame: &'f Frame, part: &Part) -> Sight<'f> {
-        let picture = frame.gray().window(self.geometry.window);
-        let place = Place::of(part, frame, self.settings);
+        self.find_at(frame, (part.along_mm, part.across_mm), part.judged)
+    }
+
+    /// What each step makes of `picture`, a region of interest.
+    pub fn steps(&mut self, picture: Gray<'_>) -> Steps {
+        self.stage.steps(picture)
+    }
+
+    /// The region nearest to `at` (along and across the belt) with what was judged of it.
+    fn find_at<'f>(
+        &mut self,
+        frame: &'f Frame,
+        at: (f64, f64),
+        judged: Option<Judged>,
+    ) -> Sight<'f> {
+        let geometry = self.geometry;
+        let at_speed_mm = frame.captured_us.as_seconds() * self.settings.belt.speed_mm_s;
+        let belt_mm = frame.belt_mm.unwrap_or(at_speed_mm);
+        let picture = frame.gray().window(geometry.window);
         let scene = self.stage.run(picture);
-        let region = place.nearest(&scene.regions, &self.geometry);
-        let drawing = region.zip(part.judged).map(|(region, judged)| {
+        let apart = |region: &Region| {
+            let along_mm = belt_mm - geometry.behind_upstream_mm(region.centroid_x + 0.5);
+            let across_mm = geometry.below_top_mm(region.centroid_y + 0.5);
+            (along_mm - at.0).hypot(across_mm - at.1)
+        };
+        let nearest = scene
+            .regions
+            .iter()
+            .min_by(|a, b| apart(a).total_cmp(&apart(b)));
+        let drawing = nearest.zip(judged).map(|(region, judged)| {
             let runs = &scene.runs[region.runs.clone()];
             self.judge.drawing(region, runs, &judged)
         });
+        let box_px = |region: &Region| {
+            [region.x_min, region.y_min, region.x_max, region.y_max].map(|px| px as usize)
+        };
         Sight {
             picture,
-            part_px: region.map(box_px),
+            part_px: nearest.map(box_px),
             drawing,
         }
     }
 
-    /// The part as `frame` shows it, with its marks and figures; `frame` as for [`Artist::find`].
-    pub fn draw(&mut self, frame: &Frame, part: &Part) -> RgbImage {
-        let sight = self.find(frame, part);
-        let words = words(part, self.settings);
-        let marks = part.judged.zip(sight.drawing.as_ref());
+    fn draw(
+        &mut self,
+        frame: &Frame,
+        at: (f64, f64),
+        judged: Option<Judged>,
+        title: String,
+    ) -> RgbImage {
+        let sight = self.find_at(frame, at, judged);
+        let marks = judged.zip(sight.drawing.as_ref());
         let all = [0, 0, sight.picture.width_px, sight.picture.height_px];
         draw_part(&Sketch {
             picture: sight.picture,
+            // Nothing is found any more: all of the picture, with the words.
             part_px: sight.part_px.unwrap_or(all),
             marks: marks.map(|(judged, drawing)| Marks {
                 drawing,
@@ -65,13 +117,8 @@ impl<'a> Artist<'a> {
                 excess: judged.excess,
             }),
             scale: self.geometry.scale,
-            words: &words,
+            words: &words(title, judged, self.settings),
         })
-    }
-
-    /// What each step makes of `picture`, a region of interest.
-    pub fn steps(&mut self, picture: Gray<'_>) -> Steps {
-        self.stage.steps(picture)
     }
 }
 
@@ -85,43 +132,11 @@ pub struct Sight<'f> {
     pub drawing: Option<Drawing>,
 }
 
-fn box_px(region: &Region) -> [usize; 4] {
-    [region.x_min, region.y_min, region.x_max, region.y_max].map(|px| px as usize)
-}
-
-/// Where a part lies, and where the belt was when a frame showed it.
-struct Place<'a> {
-    part: &'a Part,
-    belt_mm: f64,
-}
-
-impl<'a> Place<'a> {
-    fn of(part: &'a Part, frame: &Frame, settings: &Settings) -> Self {
-        let at_speed = || frame.captured_us.as_seconds() * settings.belt.speed_mm_s;
-        Self {
-            part,
-            belt_mm: frame.belt_mm.unwrap_or_else(at_speed),
-        }
-    }
-
-    fn nearest<'r>(&self, regions: &'r [Region], geometry: &Geometry) -> Option<&'r Region> {
-        let apart = |region: &Region| {
-            let along_mm = self.belt_mm - geometry.behind_upstream_mm(region.centroid_x + 0.5);
-            let across_mm = geometry.below_top_mm(region.centroid_y + 0.5);
-            (along_mm - self.part.along_mm).hypot(across_mm - self.part.across_mm)
-        };
-        regions.iter().min_by(|a, b| apart(a).total_cmp(&apart(b)))
-    }
-}
-
-fn words(part: &Part, settings: &Settings) -> Vec<String> {
-    let mut words = vec![format!("part {}: {}", part.number, part.verdict)];
-    if !part.reasons.is_empty() {
-        words[0] = format!("{} ({})", words[0], part.reasons);
-    }
-    match part.judged {
+fn words(title: String, judged: Option<Judged>, settings: &Settings) -> Vec<String> {
+    let mut words = vec![title];
+    match judged {
         Some(judged) => words.extend(figures(&judged, settings)),
-        None => words.push("never seen whole".to_owned()),
+        None => words.push("not seen whole: the picture's edge cuts it".to_owned()),
     }
     words
 }

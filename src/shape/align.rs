@@ -64,7 +64,9 @@ impl<'a> Lookup<'a> {
     fn at(&self, point: [f32; 2]) -> (f32, f32, Sample) {
         let (dx, dy) = (point[0] - self.middle[0], point[1] - self.middle[1]);
         let (u, v) = (self.cos * dx + self.sin * dy, self.cos * dy - self.sin * dx);
-        let sample = self.field.sample(self.centroid[0] + self.side * u, self.centroid[1] + v);
+        let sample = self
+            .field
+            .sample(self.centroid[0] + self.side * u, self.centroid[1] + v);
         (u, v, sample)
     }
 }
@@ -122,12 +124,7 @@ struct Normal {
 }
 
 impl Normal {
-    fn sum(
-        lookup: &Lookup,
-        points: &[[f32; 2]],
-        radius: f64,
-        weight: impl Fn(f32) -> f32,
-    ) -> Self {
+    fn sum(lookup: &Lookup, points: &[[f32; 2]], radius: f64, weight: impl Fn(f32) -> f32) -> Self {
         let mut total = Self::default();
         let per_radius = (1.0 / radius) as f32;
         // Short sums in f32, the total in f64: fast, and nothing is lost.
@@ -156,8 +153,16 @@ impl Normal {
                 }
             }
             let sum = sum.map(f64::from);
-            total.matrix.iter_mut().zip(&sum[..6]).for_each(|(total, sum)| *total += sum);
-            total.right.iter_mut().zip(&sum[6..]).for_each(|(total, sum)| *total += sum);
+            total
+                .matrix
+                .iter_mut()
+                .zip(&sum[..6])
+                .for_each(|(total, sum)| *total += sum);
+            total
+                .right
+                .iter_mut()
+                .zip(&sum[6..])
+                .for_each(|(total, sum)| *total += sum);
         }
         total
     }

@@ -53,7 +53,8 @@ impl Bitmap {
 
     /// Whether pixel (x, y) is in the set; `false` outside the rectangle.
     pub fn has(&self, x: i32, y: i32) -> bool {
-        let inside = x >= 0 && y >= 0 && (x as usize) < self.width_px && (y as usize) < self.height_px;
+        let inside =
+            x >= 0 && y >= 0 && (x as usize) < self.width_px && (y as usize) < self.height_px;
         inside && self.row(y as usize)[x as usize / 64] >> (x as usize % 64) & 1 != 0
     }
 
@@ -90,12 +91,18 @@ impl Bitmap {
 
     /// How many pixels are in the set.
     pub fn count(&self) -> u64 {
-        self.words.iter().map(|word| u64::from(word.count_ones())).sum()
+        self.words
+            .iter()
+            .map(|word| u64::from(word.count_ones()))
+            .sum()
     }
 
     /// How many pixels are in both sets, which must have the same size.
     pub fn count_common(&self, other: &Self) -> u64 {
-        assert_eq!((self.width_px, self.height_px), (other.width_px, other.height_px));
+        assert_eq!(
+            (self.width_px, self.height_px),
+            (other.width_px, other.height_px)
+        );
         let pairs = self.words.iter().zip(&other.words);
         pairs.map(|(a, b)| u64::from((a & b).count_ones())).sum()
     }
@@ -105,7 +112,8 @@ impl Bitmap {
         assert_eq!((a.width_px, a.height_px), (b.width_px, b.height_px));
         (self.width_px, self.height_px) = (a.width_px, a.height_px);
         self.words.clear();
-        self.words.extend(a.words.iter().zip(&b.words).map(|(a, b)| a & !b));
+        self.words
+            .extend(a.words.iter().zip(&b.words).map(|(a, b)| a & !b));
     }
 
     /// Makes `to` the rectangle's pixels that are not in `set`, and returns it.
@@ -128,13 +136,16 @@ impl Bitmap {
         let across = |y: usize, word: usize| {
             let row = self.row(y);
             let before = if word > 0 { row[word - 1] >> 63 } else { 0 };
-            let after = if word + 1 < words { row[word + 1] << 63 } else { 0 };
+            let after = if word + 1 < words {
+                row[word + 1] << 63
+            } else {
+                0
+            };
             row[word] & (row[word] << 1 | before) & (row[word] >> 1 | after)
         };
         let inner = |y: usize| {
-            let eroded = (0..words).map(move |word| {
-                across(y - 1, word) & across(y, word) & across(y + 1, word)
-            });
+            let eroded = (0..words)
+                .map(move |word| across(y - 1, word) & across(y, word) & across(y + 1, word));
             eroded.map(|word| u64::from(word.count_ones())).sum::<u64>()
         };
         (1..self.height_px.saturating_sub(1)).map(inner).sum()
@@ -155,6 +166,18 @@ impl Bitmap {
             self.runs(y)
                 .flat_map(move |(x0, x1)| (x0..x1).map(move |x| (x, y)))
         })
+    }
+
+    /// The box around the set: left, top, right, bottom, the last two exclusive; all 0 when it is empty.
+    pub fn bounds(&self) -> [i32; 4] {
+        let mut bounds: Option<[usize; 4]> = None;
+        for y in 0..self.height_px {
+            for (x0, x1) in self.runs(y) {
+                let [left, top, right, _] = bounds.unwrap_or([x0, y, x1, y]);
+                bounds = Some([left.min(x0), top, right.max(x1), y + 1]);
+            }
+        }
+        bounds.map_or([0; 4], |bounds| bounds.map(|px| px as i32))
     }
 
     /// The whole set as one region with its runs, whether it hangs together or not. `None` if the set is empty.
@@ -313,7 +336,10 @@ pub(crate) mod tests {
     fn a_region_has_the_published_area_box_and_moments() {
         let (region, _) = sample().to_region().unwrap();
         assert_eq!(region.area_px, 72);
-        assert_eq!((region.x_min, region.y_min, region.x_max, region.y_max), (0, 0, 18, 10));
+        assert_eq!(
+            (region.x_min, region.y_min, region.x_max, region.y_max),
+            (0, 0, 18, 10)
+        );
         assert!((region.centroid_y - 5.666_666_666_666_667).abs() < 1e-12);
         assert!((region.centroid_x - 9.444_444_444_444_445).abs() < 1e-12);
         assert!((region.mu02 - 436.0).abs() < 1e-9);

@@ -30,9 +30,11 @@ impl Outline {
     }
 
     fn round(x: f64, y: f64, radius: f64) -> Vec<(f64, f64)> {
-        let corner = |i| TAU * f64::from(i) / 180.0;
-        let corners = (0..180).map(corner);
-        corners.map(|a: f64| (x + radius * a.cos(), y + radius * a.sin())).collect()
+        let corner = |i| TAU * f64::from(i) / 90.0;
+        let corners = (0..90).map(corner);
+        corners
+            .map(|a: f64| (x + radius * a.cos(), y + radius * a.sin()))
+            .collect()
     }
 
     pub(crate) fn disc(radius: f64) -> Self {
@@ -47,7 +49,11 @@ impl Outline {
     pub(crate) fn star(radius: f64) -> Self {
         let corner = |i: u32| {
             let (sin, cos) = (TAU * f64::from(i) / 10.0).sin_cos();
-            let radius = if i.is_multiple_of(2) { radius } else { 0.5 * radius };
+            let radius = if i.is_multiple_of(2) {
+                radius
+            } else {
+                0.5 * radius
+            };
             (radius * cos, radius * sin)
         };
         Self::new(vec![(0..10).map(corner).collect()])
@@ -55,15 +61,18 @@ impl Outline {
 
     /// A ring with a tab that sits beside its middle line, so that it has a face.
     pub(crate) fn gasket(radius: f64) -> Self {
-        let tab = [(0.90, 0.05), (1.25, 0.05), (1.25, 0.40), (0.80, 0.40)];
+        // The tab's sides lie at these heights and leave the ring at these angles.
+        let (low, high) = (0.05_f64, 0.40_f64);
+        let on_ring = |y: f64| ((1.0 - y * y).sqrt(), y);
+        let tab = [on_ring(low), (1.25, low), (1.25, high), on_ring(high)];
+        let angle = |&(x, y): &(f64, f64)| f64::atan2(y, x);
         let mut outer = Self::round(0.0, 0.0, radius);
-        // Between the ring's corners at which the tab's sides leave it.
-        let angle = |(x, y): (f64, f64)| f64::atan2(y, x);
-        let inside = |&(x, y): &(f64, f64)| angle((x, y)) < 0.06 || angle((x, y)) > 0.40;
-        outer.retain(inside);
-        let at = outer.iter().position(|&p| angle(p) > 0.40 && angle(p) < 0.5).unwrap();
-        let tab = tab.map(|(x, y)| (x * radius, y * radius));
-        outer.splice(at..at, tab[..3].iter().copied());
+        outer.retain(|corner| !(low.asin()..=high.asin()).contains(&angle(corner)));
+        let at = outer
+            .iter()
+            .position(|corner| angle(corner) > high.asin())
+            .unwrap_or(0);
+        outer.splice(at..at, tab.map(|(x, y)| (x * radius, y * radius)));
         Self::new(vec![outer, Self::round(0.0, 0.0, 0.55 * radius)])
     }
 
@@ -119,7 +128,10 @@ pub(crate) fn silhouette(outline: &Outline, mm_per_px: f64) -> (Silhouette, (f64
     let half = outline.reach.ceil() as usize + 3;
     let side = 2 * half + 1;
     let share = |i: usize| {
-        let (x, y) = ((i % side) as f64 - half as f64, (i / side) as f64 - half as f64);
+        let (x, y) = (
+            (i % side) as f64 - half as f64,
+            (i / side) as f64 - half as f64,
+        );
         let offset = |k: i32| (f64::from(k) + 0.5) / 8.0 - 0.5;
         let covered = (0..64).filter(|k| outline.has(x + offset(k % 8), y + offset(k / 8)));
         (covered.count() as f64 / 64.0 * 255.0).round() as u8

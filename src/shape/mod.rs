@@ -9,6 +9,7 @@ mod edge;
 mod error;
 mod feret;
 mod field;
+mod findings;
 mod gauge;
 mod judge;
 mod measure;
@@ -24,19 +25,25 @@ mod severity;
 mod shortlist;
 mod silhouette;
 mod skeleton;
+mod store;
 mod symmetry;
+mod teach;
 mod verdict;
+mod widest;
 
 pub use bitmap::Bitmap;
 pub use distance::{DistanceTransform, NOWHERE};
 pub use error::ShapeError;
+pub use findings::{Finding, findings};
 pub use gauge::gauge_masks;
 pub use judge::{Drawing, Judge};
 pub use measure::{Measurer, Measures, skeleton};
 pub use model::Model;
 pub use pose::Found;
 pub use silhouette::{MAX_SIDE_PX, Silhouette};
+pub use store::{Figures, GrayPicture, Taught, read_gray};
 pub use symmetry::Symmetry;
+pub use teach::{LeftOut, Lesson, Pupil, Spread, Teacher};
 pub use verdict::{Reason, Reasons, Verdict};
 
 /// Where a silhouette lies in the picture. Pixel (0, 0) has its centre at (0.0, 0.0).

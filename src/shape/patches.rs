@@ -32,7 +32,16 @@ impl Patches {
     /// How many patches there are.
     pub(super) fn count(&mut self, set: &Bitmap, joined: Joined) -> usize {
         self.label(set, joined);
-        (0..self.runs.len()).filter(|&i| self.runs[i].parent == i).count()
+        (0..self.runs.len())
+            .filter(|&i| self.runs[i].parent == i)
+            .count()
+    }
+
+    /// How many pixels each patch has, in the order of their first pixels.
+    pub(super) fn sizes(&mut self, set: &Bitmap, joined: Joined) -> Vec<u64> {
+        self.label(set, joined);
+        let roots = (0..self.runs.len()).filter(|&i| self.runs[i].parent == i);
+        roots.map(|i| self.runs[i].size).collect()
     }
 
     /// Takes every 8-connected patch of fewer than `below` pixels out of `set`.

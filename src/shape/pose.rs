@@ -84,7 +84,10 @@ impl Finder {
     }
 
     fn lowest_cost(&self) -> f64 {
-        self.finalists.as_slice().first().map_or(f64::INFINITY, |&(cost, _)| cost)
+        self.finalists
+            .as_slice()
+            .first()
+            .map_or(f64::INFINITY, |&(cost, _)| cost)
     }
 
     /// Starts at the region's centroid.
@@ -163,7 +166,12 @@ impl Finder {
         let within = 1.5 * self.lowest_cost() + 0.02;
         let mut best: Option<Found> = None;
         let mut placed = None;
-        for &(_, place) in self.finalists.as_slice().iter().filter(|(cost, _)| *cost <= within) {
+        for &(_, place) in self
+            .finalists
+            .as_slice()
+            .iter()
+            .filter(|(cost, _)| *cost <= within)
+        {
             let pose = search.pose(&self.finish(search, place));
             overlay.place(search.region, search.runs, search.model, pose);
             placed = Some(pose);

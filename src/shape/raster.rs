@@ -93,10 +93,15 @@ impl Cells {
                 _ => 0,
             }
         };
-        let kinds: Vec<i16> = (0..columns * rows).map(|i| kind(i % columns, i / columns)).collect();
+        let kinds: Vec<i16> = (0..columns * rows)
+            .map(|i| kind(i % columns, i / columns))
+            .collect();
         let reach = |of: i16| chebyshev(&kinds, columns, rows, of);
         let (inside, outside) = (reach(1), reach(-1));
-        let reach = inside.iter().zip(&outside).map(|(inside, outside)| (inside - outside) as i8);
+        let reach = inside
+            .iter()
+            .zip(&outside)
+            .map(|(inside, outside)| (inside - outside) as i8);
         Self {
             columns,
             rows,
@@ -117,7 +122,10 @@ impl Cells {
 
 /// For cells of kind `of` the Chebyshev distance to the nearest cell of another kind, 0 for others.
 fn chebyshev(kinds: &[i16], columns: usize, rows: usize, of: i16) -> Vec<i16> {
-    let mut reach: Vec<i16> = kinds.iter().map(|&kind| if kind == of { FAR } else { 0 }).collect();
+    let mut reach: Vec<i16> = kinds
+        .iter()
+        .map(|&kind| if kind == of { FAR } else { 0 })
+        .collect();
     let order: Vec<usize> = (0..columns * rows).collect();
     let mut sweep = |i: usize, neighbours: [(isize, isize); 4]| {
         let (column, row) = ((i % columns) as isize, (i / columns) as isize);
@@ -156,7 +164,10 @@ pub(super) fn draw(
         let mut from = None;
         let mut x = first;
         while x < last {
-            let (u, v) = (start.0 + placement.u[0] * x as i64, start.1 + placement.v[0] * x as i64);
+            let (u, v) = (
+                start.0 + placement.u[0] * x as i64,
+                start.1 + placement.v[0] * x as i64,
+            );
             let reach = cells.reach_at(u, v);
             let inside = reach > 0 || (reach == 0 && covers(silhouette, u, v));
             match from {
@@ -184,7 +195,10 @@ fn columns_within(
     width: usize,
 ) -> Option<(usize, usize)> {
     let (mut low, mut high) = (0.0, width as f64);
-    let sides = [(placement.u[0], start.0, cells.columns), (placement.v[0], start.1, cells.rows)];
+    let sides = [
+        (placement.u[0], start.0, cells.columns),
+        (placement.v[0], start.1, cells.rows),
+    ];
     for (slope, at_left, cells) in sides {
         let (slope, at_left) = (slope as f64 / ONE, at_left as f64 / ONE);
         // A cell more on either side than the -1 to cells - 1 that matter, against rounding.
@@ -211,7 +225,12 @@ mod tests {
     use super::*;
     use proptest::prelude::*;
 
-    fn defined(silhouette: &Silhouette, placement: &Placement, origin: (i32, i32), size: usize) -> Bitmap {
+    fn defined(
+        silhouette: &Silhouette,
+        placement: &Placement,
+        origin: (i32, i32),
+        size: usize,
+    ) -> Bitmap {
         let mut drawn = Bitmap::new(size, size);
         for (x, y) in (0..size * size).map(|i| (i % size, i / size)) {
             let (u, v) = placement.inverse(origin.0 as i64 + x as i64, origin.1 as i64 + y as i64);
@@ -290,6 +309,12 @@ mod tests {
         let near = |a: (f64, f64), b: (f64, f64)| (a.0 - b.0).hypot(a.1 - b.1) < 1e-8;
         // A place to the right of the centroid comes to lie below it; mirrored, above it.
         assert!(near(offset(pose), (3.0, 0.0)));
-        assert!(near(offset(Pose { flipped: true, ..pose }), (-3.0, 0.0)));
+        assert!(near(
+            offset(Pose {
+                flipped: true,
+                ..pose
+            }),
+            (-3.0, 0.0)
+        ));
     }
 }

@@ -26,7 +26,11 @@ impl Symmetry {
 
     /// Angles are told apart from 0 up to this.
     pub fn span_deg(self) -> f64 {
-        if self.turns == 0 { 0.0 } else { 360.0 / f64::from(self.turns) }
+        if self.turns == 0 {
+            0.0
+        } else {
+            360.0 / f64::from(self.turns)
+        }
     }
 
     /// The smallest of the angles that look the same as this one.
@@ -51,11 +55,15 @@ impl Symmetry {
             ..model.identity()
         };
         // Turns that have nothing to do with one another or with the angles of corners.
-        let round = [17.3, 47.9, 77.7, 101.3, 137.5].iter().all(|&angle| same.at(turned(angle)));
+        let round = [17.3, 47.9, 77.7, 101.3, 137.5]
+            .iter()
+            .all(|&angle| same.at(turned(angle)));
         let turns = if round {
             0
         } else {
-            let found = (2..=MOST_TURNS).rev().find(|&n| same.at(turned(360.0 / f64::from(n))));
+            let found = (2..=MOST_TURNS)
+                .rev()
+                .find(|&n| same.at(turned(360.0 / f64::from(n))));
             found.unwrap_or(1)
         };
         let mirror = round || same.anywhere_mirrored(turns);
@@ -87,7 +95,8 @@ impl<'a> Same<'a> {
     }
 
     fn fit(&mut self, pose: Pose) -> f64 {
-        self.overlay.place(&self.region, &self.runs, self.model, pose);
+        self.overlay
+            .place(&self.region, &self.runs, self.model, pose);
         self.overlay.fit()
     }
 
@@ -100,23 +109,31 @@ impl<'a> Same<'a> {
     /// Whether some turn of the mirror image is the silhouette again.
     fn anywhere_mirrored(&mut self, turns: u32) -> bool {
         let span = 360.0 / f64::from(turns);
-        let step = (1.0 / self.model.radius_px.max(1.0)).to_degrees().max(0.5);
-        let count = (span / step).ceil() as u32;
-        let pose = |angle_deg| Pose {
-            angle_deg,
+        // Two pixels at the rim, then half a pixel.
+        let coarse = (2.0 / self.model.radius_px.max(1.0)).to_degrees().clamp(0.2, 9.0);
+        let best = self.best_mirrored(0.0, coarse, (span / coarse).ceil() as u32);
+        let best = self.best_mirrored(best - coarse, coarse / 4.0, 9);
+        self.at(self.mirrored(best))
+    }
+
+    fn mirrored(&self, angle_deg: f64) -> Pose {
+        Pose {
+            angle_deg: angle_deg.rem_euclid(360.0),
             flipped: true,
             ..self.model.identity()
-        };
-        let angles = (0..count).map(|i| f64::from(i) * span / f64::from(count));
-        let poses: Vec<Pose> = angles.map(pose).collect();
-        let mut best = (0.0, Pose::default());
-        for pose in poses {
-            let fit = self.fit(pose);
+        }
+    }
+
+    /// The angle of the best fit among `count` from `first` on.
+    fn best_mirrored(&mut self, first: f64, step: f64, count: u32) -> f64 {
+        let mut best = (0.0, first);
+        for angle in (0..count).map(|i| first + f64::from(i) * step) {
+            let fit = self.fit(self.mirrored(angle));
             if fit > best.0 {
-                best = (fit, pose);
+                best = (fit, angle);
             }
         }
-        self.at(best.1)
+        best.1
     }
 }
 

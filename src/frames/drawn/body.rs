@@ -4,7 +4,7 @@ use std::sync::Arc;
 
 use super::nominal::Nominal;
 use super::plane::Point;
-use super::search::{Square, highest};
+use super::search::{Square, area_mm2, highest};
 
 /// A plain figure that is cut away from a part or added to it.
 #[derive(Clone, Copy, Debug)]
@@ -108,6 +108,49 @@ impl Body {
             |p| nominal.signed_mm(p),
             |p| nearest_mm(&self.burrs, p),
         )
+    }
+
+    /// Area of the nominal shape that cuts take away.
+    pub(super) fn missing_mm2(&self) -> f64 {
+        let nominal = &self.nominal.outline;
+        area_mm2(Square::around(self.nominal.radius_mm), &|p| {
+            nominal.signed_mm(p).max(nearest_mm(&self.cuts, p))
+        })
+    }
+
+    /// Area that burrs add to the nominal shape.
+    pub(super) fn excess_mm2(&self) -> f64 {
+        let nominal = &self.nominal.outline;
+        area_mm2(self.all(), &|p| {
+            nearest_mm(&self.burrs, p).max(-nominal.signed_mm(p))
+        })
+    }
+
+    /// Whether no bite has cut a piece off, however thin, or left one hanging by a neck of less than a millimetre.
+    pub(super) fn hangs_together(&self) -> bool {
+        self.one_piece(0.4, 0.5) && self.one_piece(0.2, 0.0)
+    }
+
+    /// Whether the points of a grid that lie deeper than this are all joined.
+    fn one_piece(&self, step_mm: f64, deeper_mm: f64) -> bool {
+        let half = (self.all().half_mm / step_mm).ceil() as usize;
+        let side = 2 * half + 1;
+        let at_mm = |index: usize| (index as f64 - half as f64) * step_mm;
+        // Left out at the border of the grid, where no part reaches: every other point has four neighbours.
+        let inner = |index: usize| (1..side - 1).contains(&index);
+        let is_part = |index: usize| {
+            let (x, y) = (index % side, index / side);
+            let point = Point::new(at_mm(x), at_mm(y));
+            inner(x) && inner(y) && self.signed_mm(point) < -deeper_mm
+        };
+        let mut left: Vec<bool> = (0..side * side).map(is_part).collect();
+        let mut open: Vec<_> = left.iter().position(|&is| is).into_iter().collect();
+        while let Some(index) = open.pop() {
+            if std::mem::take(&mut left[index]) {
+                open.extend([index - 1, index + 1, index - side, index + side]);
+            }
+        }
+        !left.contains(&true)
     }
 
     /// How far a part of another size lies within (`side` -1) or beyond (1) the nominal shape, found at many places of

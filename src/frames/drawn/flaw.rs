@@ -33,9 +33,18 @@ const LARGEST_MM: f64 = 12.0;
 /// How many places on the rim are tried.
 const TRIES: usize = 60;
 
-/// Cuts a bite that is `wanted_mm` deep. Gives up, leaving the part as it is, where no tried place is thick enough.
-pub(super) fn bite(body: &mut Body, wanted_mm: f64, dice: &mut Dice) {
-    place(body, wanted_mm, dice, |body, dice| {
+/// What a flaw should come to.
+#[derive(Clone, Copy, Debug)]
+pub(super) struct Wanted {
+    /// The figure.
+    pub depth_mm: f64,
+    /// The least area, so that it is not taken for noise along the edge.
+    pub area_mm2: f64,
+}
+
+/// Cuts a bite of the wanted depth. `false`, leaving the part as it is, if no tried place takes one.
+pub(super) fn bite(body: &mut Body, wanted: Wanted, dice: &mut Dice) -> bool {
+    place(body, wanted, dice, |body, dice| {
         let rim = body.nominal.outline.rim(dice.between(0.0, 1.0));
         match dice.below(4) {
             0 => Flaw::Notch {
@@ -49,50 +58,54 @@ pub(super) fn bite(body: &mut Body, wanted_mm: f64, dice: &mut Dice) {
             },
             _ => Flaw::Bite {
                 rim,
-                radius_mm: dice.between(2.5, 5.0),
+                radius_mm: dice.between(2.5, 6.0),
             },
         }
-    });
+    })
 }
 
-/// Breaks off a tip so that what is missing is `wanted_mm` deep.
-pub(super) fn break_tip(body: &mut Body, wanted_mm: f64, dice: &mut Dice) {
-    place(body, wanted_mm, dice, |body, dice| {
+/// Breaks off a tip so that what is missing has the wanted depth. Answers like [`bite`].
+pub(super) fn break_tip(body: &mut Body, wanted: Wanted, dice: &mut Dice) -> bool {
+    place(body, wanted, dice, |body, dice| {
         let tips = &body.nominal.tips;
         let rim = body.nominal.outline.rim(tips[dice.below(tips.len())]);
         Flaw::Chip {
             rim,
             outward: rim.outward.turned(Point::towards(dice.between(-0.3, 0.3))),
         }
-    });
+    })
 }
 
-/// Adds a burr that sticks out by `wanted_mm`.
-pub(super) fn burr(body: &mut Body, wanted_mm: f64, dice: &mut Dice) {
-    place(body, wanted_mm, dice, |body, dice| {
+/// Adds a burr that sticks out as far as wanted. Answers like [`bite`].
+pub(super) fn burr(body: &mut Body, wanted: Wanted, dice: &mut Dice) -> bool {
+    place(body, wanted, dice, |body, dice| {
         let rim = body.nominal.outline.rim(dice.between(0.0, 1.0));
-        let (thin_mm, thick_mm) = if dice.coin() { (0.6, 0.9) } else { (1.5, 2.8) };
+        let (thin_mm, thick_mm) = if dice.coin() { (0.6, 0.9) } else { (1.5, 4.0) };
         Flaw::Burr {
             rim,
             towards: rim.outward.turned(Point::towards(dice.between(-0.4, 0.4))),
             radius_mm: dice.between(thin_mm, thick_mm),
         }
-    });
+    })
 }
 
 fn place(
     body: &mut Body,
-    wanted_mm: f64,
+    wanted: Wanted,
     dice: &mut Dice,
     mut flaw: impl FnMut(&Body, &mut Dice) -> Flaw,
-) {
+) -> bool {
     for _ in 0..TRIES {
         let flaw = flaw(body, dice);
-        if let Some(made) = flaw.sized(body, wanted_mm) {
+        if let Some(made) = flaw.sized(body, wanted.depth_mm)
+            && flaw.area_mm2(&made) >= wanted.area_mm2
+            && flaw.leaves_one_piece(&made)
+        {
             *body = made;
-            return;
+            return true;
         }
     }
+    false
 }
 
 impl Flaw {
@@ -125,6 +138,17 @@ impl Flaw {
                 body.missing_mm(at_least_mm)
             }
             Self::Burr { .. } => body.excess_mm(at_least_mm),
+        }
+    }
+
+    fn leaves_one_piece(self, body: &Body) -> bool {
+        matches!(self, Self::Burr { .. }) || body.hangs_together()
+    }
+
+    fn area_mm2(self, body: &Body) -> f64 {
+        match self {
+            Self::Bite { .. } | Self::Notch { .. } | Self::Chip { .. } => body.missing_mm2(),
+            Self::Burr { .. } => body.excess_mm2(),
         }
     }
 

@@ -45,6 +45,13 @@ impl Scene {
     }
 }
 
+fn word(tone: Tone) -> &'static str {
+    match tone {
+        Tone::Bright => "bright",
+        Tone::Dark => "dark",
+    }
+}
+
 impl FromStr for Scene {
     type Err = DrawnError;
 
@@ -76,12 +83,10 @@ pub enum DrawnError {
     #[error("there is no scene \"{0}\"; there are oat-stars and gaskets")]
     Scene(String),
     /// Bright parts for a setting of dark ones, or the other way round.
-    #[error("picture.parts is {came:?}, but {} shows the opposite; draw with the settings of that scene", scene.name())]
+    #[error("picture.parts is not {}, but {} are; draw with the settings of that scene", word(scene.tone()), scene.name())]
     Tone {
         /// The scene.
         scene: Scene,
-        /// What the settings say.
-        came: Tone,
     },
     /// Not even one row of parts fits under the camera.
     #[error("the camera sees {came_mm:.1} mm {what} the belt, and {} need at least {needed_mm:.1} mm", scene.name())]
@@ -136,6 +141,7 @@ pub(super) struct Job {
     /// The rows in which parts travel.
     pub lanes: Vec<Lane>,
     pub speck_mm2: f64,
+    pub flaw_mm2: f64,
     pub glare_mm2: f64,
 }
 
@@ -159,8 +165,7 @@ impl Job {
             return Err(DrawnError::NoParts);
         }
         if settings.picture.parts != scene.tone() {
-            let came = settings.picture.parts;
-            return Err(DrawnError::Tone { scene, came });
+            return Err(DrawnError::Tone { scene });
         }
         let job = Self {
             drawing: *drawing,
@@ -174,19 +179,21 @@ impl Job {
                 .map(|px| f64::from(px) * settings.camera.mm_per_px),
             lanes: lanes(settings, &nominal, shape.excess_mm),
             speck_mm2: settings.picture.speck_below_mm2,
+            flaw_mm2: settings.judge.flaw_below_mm2,
             glare_mm2: settings.picture.fill_below_mm2,
             nominal,
         };
-        job.check()?;
+        job.check_view()?;
+        job.check_limits()?;
         Ok(job)
     }
 
-    fn check(&self) -> Result<(), DrawnError> {
-        let scene = self.drawing.scene;
+    /// At least one row of parts must fit into the view.
+    fn check_view(&self) -> Result<(), DrawnError> {
         let needed_mm = lane_mm(&self.nominal, self.excess_mm);
         let [along_mm, across_mm] = self.view_mm;
         let narrow = |what, came_mm| DrawnError::TooNarrow {
-            scene,
+            scene: self.drawing.scene,
             what,
             came_mm,
             needed_mm,
@@ -197,22 +204,21 @@ impl Job {
         if self.lanes.is_empty() {
             return Err(narrow("across", across_mm));
         }
-        let most = [
-            (
-                "missing_mm",
-                self.missing_mm,
-                self.nominal.deepest_mm / 2.0 - CLEAR_MM,
-            ),
-            (
-                "excess_mm",
-                self.excess_mm,
-                LONGEST_BURR_MM / 2.0 - CLEAR_MM,
-            ),
+        Ok(())
+    }
+
+    /// There must be flaws on both sides of each limit.
+    fn check_limits(&self) -> Result<(), DrawnError> {
+        let deepest_mm = self.nominal.deepest_mm / 2.0 - CLEAR_MM;
+        let longest_mm = LONGEST_BURR_MM / 2.0 - CLEAR_MM;
+        let limits = [
+            ("missing_mm", self.missing_mm, deepest_mm),
+            ("excess_mm", self.excess_mm, longest_mm),
         ];
-        for (key, came_mm, most_mm) in most {
+        for (key, came_mm, most_mm) in limits {
             if came_mm > most_mm {
                 return Err(DrawnError::Limit {
-                    scene,
+                    scene: self.drawing.scene,
                     key,
                     came_mm,
                     most_mm,

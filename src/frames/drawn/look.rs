@@ -48,7 +48,7 @@ impl Look {
                 glares: 3,
                 glare: 1.25,
                 crumbs: 5,
-                vignetting: 4.0,
+                vignetting: 3.8,
                 noise: 1.0,
             },
             Scene::Gaskets => Self {
@@ -64,7 +64,7 @@ impl Look {
                 glares: 3,
                 glare: 0.95,
                 crumbs: 4,
-                vignetting: 4.0,
+                vignetting: 3.8,
                 noise: 1.0,
             },
         }

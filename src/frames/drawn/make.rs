@@ -2,7 +2,7 @@
 
 use super::body::Body;
 use super::dice::{Dice, Stream};
-use super::flaw;
+use super::flaw::{self, Wanted};
 use super::job::{CLEAR_MM, Job, Scene, farthest_mm};
 use super::plane::Point;
 use super::truth::Kind;
@@ -108,7 +108,9 @@ impl Made {
             cuts: Vec::new(),
             burrs: Vec::new(),
         };
-        add_flaw(&mut body, job, kind, &mut dice);
+        let flawless = matches!(kind, Kind::Flipped | Kind::Touching | Kind::AtEdge);
+        let as_meant = flawless || add_flaw(&mut body, job, kind, &mut dice);
+        let kind = if as_meant { kind } else { Kind::Good };
         let angle_deg = dice.between(0.0, 360.0);
         let mut made = Self {
             number,
@@ -164,40 +166,57 @@ impl Made {
     }
 }
 
-fn add_flaw(body: &mut Body, job: &Job, kind: Kind, dice: &mut Dice) {
-    let clear_mm = |limit_mm: f64, most_mm: f64, dice: &mut Dice| {
-        let low_mm = limit_mm + CLEAR_MM;
-        dice.between(low_mm, farthest_mm(limit_mm).min(most_mm).max(low_mm))
-    };
-    // What is as small as the natural variation is no flaw.
-    let small_mm = |limit_mm: f64, dice: &mut Dice| {
-        let most_mm = (limit_mm / 2.0).min(limit_mm - CLEAR_MM);
-        (most_mm > 0.2).then(|| dice.between(0.2, most_mm))
-    };
+/// Gives `body` the flaw of `kind`. `false` where there is none to give: not asked for, limits too narrow for one, or
+/// no place for it.
+fn add_flaw(body: &mut Body, job: &Job, kind: Kind, dice: &mut Dice) -> bool {
     let (missing_mm, excess_mm) = (job.missing_mm, job.excess_mm);
     let deepest_mm = job.nominal.deepest_mm * 0.8;
-    let bite_mm = match kind {
-        Kind::SmallBite => small_mm(missing_mm, dice),
-        Kind::NearBiteWithin => Some(missing_mm - NEAR_MM).filter(|&mm| mm > 0.2),
-        Kind::NearBiteOver => Some(missing_mm + NEAR_MM),
-        Kind::Bite => Some(clear_mm(missing_mm, deepest_mm, dice)),
-        _ => None,
+    let (add, depth_mm): (fn(&mut Body, Wanted, &mut Dice) -> bool, _) = match kind {
+        Kind::SmallBite => (flaw::bite, small_mm(missing_mm, dice)),
+        Kind::NearBiteWithin => (flaw::bite, Some(missing_mm - NEAR_MM)),
+        Kind::NearBiteOver => (flaw::bite, Some(missing_mm + NEAR_MM)),
+        Kind::Bite => (flaw::bite, Some(clear_mm(missing_mm, deepest_mm, dice))),
+        Kind::SmallBurr => (flaw::burr, small_mm(excess_mm, dice)),
+        Kind::NearBurrWithin => (flaw::burr, Some(excess_mm - NEAR_MM)),
+        Kind::NearBurrOver => (flaw::burr, Some(excess_mm + NEAR_MM)),
+        Kind::Burr => (flaw::burr, Some(clear_mm(excess_mm, f64::INFINITY, dice))),
+        Kind::BrokenTip => {
+            let most_mm = missing_mm + CLEAR_MM + 1.0;
+            (flaw::break_tip, Some(clear_mm(missing_mm, most_mm, dice)))
+        }
+        Kind::Good | Kind::Flipped | Kind::Touching | Kind::AtEdge => return false,
     };
-    let burr_mm = match kind {
-        Kind::SmallBurr => small_mm(excess_mm, dice),
-        Kind::NearBurrWithin => Some(excess_mm - NEAR_MM).filter(|&mm| mm > 0.2),
-        Kind::NearBurrOver => Some(excess_mm + NEAR_MM),
-        Kind::Burr => Some(clear_mm(excess_mm, f64::INFINITY, dice)),
-        _ => None,
-    };
-    if let Some(bite_mm) = bite_mm {
-        flaw::bite(body, bite_mm, dice);
+    let wanted = depth_mm
+        .filter(|&mm| mm >= LEAST_MM)
+        .map(|depth_mm| Wanted {
+            depth_mm,
+            area_mm2: if depth_mm > SHALLOW_MM {
+                2.0 * job.flaw_mm2
+            } else {
+                0.0
+            },
+        });
+    wanted.is_some_and(|wanted| add(body, wanted, dice))
+}
+
+/// What is shallower is lost in the natural variation of size.
+const LEAST_MM: f64 = 0.12;
+/// What is shallower may be too small to count.
+const SHALLOW_MM: f64 = 0.3;
+
+/// Well within a limit: either hardly there, or large enough to count.
+fn small_mm(limit_mm: f64, dice: &mut Dice) -> Option<f64> {
+    let (low_mm, most_mm) = (2.5 * SHALLOW_MM, limit_mm - CLEAR_MM);
+    let shallow_mm = SHALLOW_MM.min(most_mm);
+    if most_mm > low_mm && dice.coin() {
+        Some(dice.between(low_mm, most_mm))
+    } else {
+        (shallow_mm > LEAST_MM).then(|| dice.between(LEAST_MM, shallow_mm))
     }
-    if let Some(burr_mm) = burr_mm {
-        flaw::burr(body, burr_mm, dice);
-    }
-    if kind == Kind::BrokenTip {
-        let most_mm = missing_mm + CLEAR_MM + 1.0;
-        flaw::break_tip(body, clear_mm(missing_mm, most_mm, dice), dice);
-    }
+}
+
+/// Clearly over a limit, up to three times as much.
+fn clear_mm(limit_mm: f64, most_mm: f64, dice: &mut Dice) -> f64 {
+    let low_mm = limit_mm + CLEAR_MM;
+    dice.between(low_mm, farthest_mm(limit_mm).min(most_mm).max(low_mm))
 }

@@ -101,6 +101,24 @@ pub(super) fn highest(
     best
 }
 
+/// Area within `all` where `member` is negative, from squares of at least 0.03 mm: right to a few per cent for what is
+/// wider than a pixel. `member` must change by at most 1 mm per mm.
+pub(super) fn area_mm2(all: Square, member: &impl Fn(Point) -> f64) -> f64 {
+    const SMALLEST_MM: f64 = 0.03;
+    let outside_mm = member(all.centre);
+    if outside_mm > all.corner_mm() {
+        0.0
+    } else if outside_mm < -all.corner_mm() || all.half_mm < SMALLEST_MM {
+        let whole_mm2 = 4.0 * all.half_mm * all.half_mm;
+        if outside_mm < 0.0 { whole_mm2 } else { 0.0 }
+    } else {
+        all.quarters()
+            .into_iter()
+            .map(|square| area_mm2(square, member))
+            .sum()
+    }
+}
+
 #[cfg(test)]
 mod tests {
     use super::*;
@@ -119,6 +137,17 @@ mod tests {
         assert_eq!(
             highest(Square::around(10.0), 0.0, Point::length, nowhere),
             0.0
+        );
+    }
+
+    /// Elementary: pi r^2.
+    #[test]
+    fn the_area_of_a_disc() {
+        let disc = |p: Point| (p - Point::new(5.0, 0.3)).length() - 2.0;
+        let found = area_mm2(Square::around(10.0), &disc);
+        assert!(
+            (found / (4.0 * std::f64::consts::PI) - 1.0).abs() < 0.01,
+            "{found}"
         );
     }
 }

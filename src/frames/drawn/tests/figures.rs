@@ -70,7 +70,7 @@ fn flaws_are_as_far_from_their_limits_as_they_should_be() {
                     (truth.missing_mm - missing_mm, truth.excess_mm - excess_mm);
                 let near = |beyond_mm: f64, want_mm: f64| (beyond_mm - want_mm).abs() < CLOSE_MM;
                 let small =
-                    |mm: f64, limit_mm: f64| (0.2 - CLOSE_MM..limit_mm - CLEAR_MM).contains(&mm);
+                    |mm: f64, limit_mm: f64| (0.1..limit_mm - CLEAR_MM + CLOSE_MM).contains(&mm);
                 let good = match truth.kind {
                     Kind::NearBiteWithin => near(missing, -0.3),
                     Kind::NearBiteOver => near(missing, 0.3),

@@ -170,8 +170,7 @@ fn what_cannot_be_drawn_is_said() {
     assert_eq!(
         refused(&|settings, _| settings.picture.parts = Tone::Dark),
         DrawnError::Tone {
-            scene: Scene::OatStars,
-            came: Tone::Dark
+            scene: Scene::OatStars
         },
     );
     for (what, width_px, height_px) in [("along", 150, 480), ("across", 640, 150)] {
