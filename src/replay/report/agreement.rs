@@ -206,7 +206,8 @@ fn curve(facts: &Facts<'_>) -> Markup {
 }
 
 fn caption(curve: &Tradeoff, area: f64) -> String {
-    let scaled = "All limits multiplied by one factor, from strict (left) to lax (right); the circle is where they stand.";
+    let scaled = "All limits multiplied by one factor, lax on the left, strict on the right; the circle is where they stand now. Parts \
+                  that were not seen are left out.";
     // Shown to one part in ten thousand, and 1 only when it is 1.
     let area = (area * 1e4).floor() / 1e4;
     format!(
@@ -268,7 +269,8 @@ fn draw_curve(curve: &Tradeoff) -> Markup {
         @if let Some(now) = now {
             @let (x, y) = place(now);
             circle.here cx=(n(x)) cy=(n(y)) r="6" {}
-            text.note x=(n(x + 10.0)) y=(n(y - 8.0)) {
+            @let right = x > plot.width / 2.0;
+            text class=(if right { "note end" } else { "note" }) x=(n(if right { x - 10.0 } else { x + 10.0 })) y=(n(y - 9.0)) {
                 "now: " (counted(now.misses, "miss", "misses")) ", " (counted(now.false_rejects, "false reject", "false rejects"))
             }
         }

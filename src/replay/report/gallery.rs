@@ -88,7 +88,7 @@ fn card(case: &Case<'_>, picture: &Markup) -> Markup {
                 (format!("{:.1} mm along, {:.1} mm across", part.along_mm, part.across_mm))
                 @if let Some(figures) = &case.figures {
                     br; "missing " (mm(figures.missing_mm)) " of " (mm(figures.missing_limit_mm))
-                    " mm, excess " (mm(figures.excess_mm)) " of " (mm(figures.excess_limit_mm)) " mm"
+                    ", excess " (mm(figures.excess_mm)) " of " (mm(figures.excess_limit_mm)) " mm"
                 }
                 @if let Some(label) = case.label {
                     br; "label: " (label.verdict)
