@@ -133,3 +133,34 @@ fn candidates(labels: &[Label], parts: &[Part], gate_mm: f64) -> Vec<(f64, usize
     }
     pairs
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn label(along_mm: f64, verdict: Verdict) -> Label {
+        Label {
+            along_mm,
+            across_mm: 30.0,
+            verdict,
+            note: String::new(),
+        }
+    }
+
+    #[test]
+    fn a_bad_part_that_nobody_saw_passes_unless_its_belt_was_rejected() {
+        let labels = [
+            label(100.0, Verdict::Reject),
+            label(200.0, Verdict::Reject),
+            label(210.0, Verdict::Keep),
+        ];
+        let gone = Stretch {
+            from_mm: 180.0,
+            to_mm: 230.0,
+        };
+        let score = score(&labels, &[], &[gone], 10.0);
+        let labels = |list: &[Match]| list.iter().map(|found| found.label).collect::<Vec<_>>();
+        assert_eq!(labels(&score.misses), [Some(0)]);
+        assert_eq!(labels(&score.not_found), [Some(2)]);
+    }
+}

@@ -237,7 +237,7 @@ fn draw_curve(curve: &Tradeoff) -> Markup {
         let near = curve
             .points
             .iter()
-            .filter(|point| (0.5..=2.0).contains(&point.limit));
+            .filter(|point| (0.8..=1.25).contains(&point.limit));
         near.map(of).max().unwrap_or(0).max(1) as f64
     };
     let shares = |count: f64, of: usize| count / of as f64 * 100.0;

@@ -241,3 +241,95 @@ fn summary(whole: Stretch, facts: &Facts<'_>, unseen: &[Stretch]) -> Markup {
     );
     figure(&drawing, &caption, true)
 }
+
+#[cfg(test)]
+mod tests {
+    use std::path::Path;
+
+    use super::*;
+    use crate::belt::Part;
+    use crate::replay::Outcome;
+    use crate::settings;
+    use crate::shape::{Reason, Reasons};
+    use crate::units::Micros;
+
+    /// A row of parts 50 mm apart; every tenth is rejected.
+    fn outcome(parts: u64) -> Outcome {
+        let part = |k: u64| {
+            let lead_mm = k as f64 * 50.0;
+            let rejected = k % 10 == 9;
+            Part {
+                number: k + 1,
+                along_mm: lead_mm + 19.0,
+                across_mm: 30.0,
+                area_mm2: 700.0,
+                extent: Extent {
+                    lead_mm,
+                    trail_mm: lead_mm + 38.0,
+                    top_mm: 11.0,
+                    bottom_mm: 49.0,
+                },
+                first_us: Micros(0),
+                decided_us: Micros(0),
+                views: 2,
+                spoken_us: Micros(0),
+                judged: None,
+                verdict: if rejected {
+                    Verdict::Reject
+                } else {
+                    Verdict::Keep
+                },
+                reasons: if rejected {
+                    Reasons::NONE.with(Reason::Partial)
+                } else {
+                    Reasons::NONE
+                },
+            }
+        };
+        Outcome {
+            parts: (0..parts).map(|k| (part(k), None)).collect(),
+            ..Outcome::default()
+        }
+    }
+
+    fn drawn(parts: u64, unseen: &[Stretch]) -> String {
+        let loaded = settings::load(Path::new("config/oat-stars.toml")).unwrap();
+        let outcome = outcome(parts);
+        let facts = Facts::gather(&loaded.settings, &outcome, None);
+        belt(&facts, unseen).into_string()
+    }
+
+    #[test]
+    fn a_short_belt_shows_each_part() {
+        let gap = Stretch {
+            from_mm: 1000.0,
+            to_mm: 1100.0,
+        };
+        let map = drawn(100, &[gap]);
+        // 24 parts of 50 mm fill a row of 1200 mm, so none lies across its end.
+        assert_eq!(map.matches("<title>part ").count(), 100);
+        assert_eq!(map.matches("class=\"unseen\"").count(), 1);
+        assert!(map.contains("<title>part 10: reject partial</title>"));
+    }
+
+    #[test]
+    fn a_long_belt_is_counted_in_columns() {
+        let gap = Stretch {
+            from_mm: 400_000.0,
+            to_mm: 401_000.0,
+        };
+        let map = drawn(50_000, &[gap]);
+        assert!(map.len() < 60_000, "{} bytes", map.len());
+        assert!(map.contains("Too long to place each of 50000 parts"));
+        assert!(map.contains("1000 of 20833 mm not seen"));
+        let loaded = settings::load(Path::new("config/oat-stars.toml")).unwrap();
+        let outcome = outcome(50_000);
+        let facts = Facts::gather(&loaded.settings, &outcome, None);
+        let pieces = pieces(whole(&facts, &[]).unwrap(), &facts, &[]);
+        let count = |of: fn(&Piece) -> usize| pieces.iter().map(of).sum::<usize>();
+        assert_eq!(
+            (count(|piece| piece.kept), count(|piece| piece.rejected)),
+            (45_000, 5_000)
+        );
+    }
+}

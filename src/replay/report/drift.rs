@@ -30,9 +30,18 @@ pub fn drift(facts: &Facts<'_>) -> Markup {
         return html! { p { "No part was seen whole." } };
     }
     let [good, bad] = facts.side_names();
+    let marks = if dots.len() <= SINGLE_PARTS {
+        format!(
+            "Discs are {good} parts, crosses {bad} ones; what lies outside is drawn at the edge."
+        )
+    } else {
+        format!(
+            "Each bar spans the {good} parts of its moment, each cross is the {bad} part that came nearest to passing."
+        )
+    };
     let caption = format!(
-        "Margin is the distance to the nearer limit; below 0 a part is beyond it. Discs are {good} parts, crosses {bad} ones; \
-         what lies outside is drawn at the edge. The line is the median of {good} parts. {}",
+        "Margin is the distance to the nearer limit; below 0 a part is beyond it. {marks} The line is the median of {good} \
+         parts. {}",
         trend(&dots, good)
     );
     figure(&draw(&dots), &caption, true)
@@ -132,7 +141,8 @@ fn mark(plot: &Plot, dot: &Dot) -> Markup {
     if dot.good { disc(x, y) } else { cross(x, y) }
 }
 
-/// For each column of the chart a bar from the smallest to the largest margin of good parts, and the worst of the bad.
+/// For each column of the chart a bar from the smallest to the largest margin of good parts, and a cross for the
+/// bad part that came nearest to passing.
 fn columns(plot: &Plot, dots: &[Dot]) -> Markup {
     let mut ends = vec![[None::<(f64, f64)>; 2]; COLUMNS];
     for dot in dots {
@@ -148,7 +158,7 @@ fn columns(plot: &Plot, dots: &[Dot]) -> Markup {
             @if let Some((low, high)) = good {
                 path.good.stroke d={ "M" (n(x(k))) " " (n(plot.y.at(*low) + 1.0)) "V" (n(plot.y.at(*high) - 1.0)) } {}
             }
-            @if let Some((low, _)) = bad { (cross(x(k), plot.y.at(*low))) }
+            @if let Some((_, high)) = bad { (cross(x(k), plot.y.at(*high))) }
         }
     }
 }
@@ -170,7 +180,7 @@ mod tests {
     fn a_margin_that_shrinks_is_told() {
         let text = trend(&dots(100, |k| 2.0 - k as f64 / 100.0), "good");
         assert!(
-            text.contains("1.90 mm in the first fifth, 1.10 mm in the last"),
+            text.contains("1.91 mm in the first fifth, 1.11 mm in the last"),
             "{text}"
         );
         assert!(trend(&dots(10, |_| 1.0), "good").starts_with("Too few"));

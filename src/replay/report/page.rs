@@ -97,7 +97,7 @@ pub fn table(head: &[&str], numbers: &[usize], rows: &[Vec<String>]) -> Markup {
     let class = |column: usize| numbers.contains(&column).then_some("number");
     html! {
         div.wide {
-            table {
+            table.long[head.len() > 6] {
                 thead { tr { @for (k, name) in head.iter().enumerate() { th scope="col" class=[class(k)] { (name) } } } }
                 tbody {
                     @for row in rows {

@@ -149,7 +149,7 @@ mod tests {
         );
         let rule = MISSES.in_the_head(Count::new(0, 300)).unwrap();
         assert!(
-            rule.contains("3 / 300 = 1.0 %") && rule.contains("exactly 1.0 %"),
+            rule.contains("3 / 300 = 1.0 %") && rule.contains("exactly 1.00 %"),
             "{rule}"
         );
         assert_eq!(MISSES.in_the_head(Count::new(1, 300)), None);
