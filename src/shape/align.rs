@@ -145,12 +145,7 @@ struct Normal {
 }
 
 impl Normal {
-    fn sum(
-        lookup: &Lookup,
-        points: &[[f32; 2]],
-        radius: f64,
-        weight: impl Fn(f32) -> f32,
-    ) -> Self {
+    fn sum(lookup: &Lookup, points: &[[f32; 2]], radius: f64, weight: impl Fn(f32) -> f32) -> Self {
         let mut total = Self::default();
         let per_radius = (1.0 / radius) as f32;
         // Short sums in f32, the total in f64: fast, and nothing is lost.
@@ -160,7 +155,11 @@ impl Normal {
                 let Batch { u, v, samples } = lookup.at(some);
                 for i in 0..LANES {
                     let distance = samples.distance[i];
-                    let weight = if i < some.len() { weight(distance) } else { 0.0 };
+                    let weight = if i < some.len() {
+                        weight(distance)
+                    } else {
+                        0.0
+                    };
                     let (gu, gv) = (lookup.side * samples.slope_x[i], samples.slope_y[i]);
                     // Shifting the silhouette by +u moves the point by -u in its frame; turning it, along (v, -u).
                     let turn = (gu * v[i] - gv * u[i]) * per_radius;
@@ -177,8 +176,16 @@ impl Normal {
                 }
             }
             let sums = sums.map(|lanes| f64::from(lanes.into_iter().sum::<f32>()));
-            total.matrix.iter_mut().zip(&sums[..6]).for_each(|(total, sum)| *total += sum);
-            total.right.iter_mut().zip(&sums[6..]).for_each(|(total, sum)| *total += sum);
+            total
+                .matrix
+                .iter_mut()
+                .zip(&sums[..6])
+                .for_each(|(total, sum)| *total += sum);
+            total
+                .right
+                .iter_mut()
+                .zip(&sums[6..])
+                .for_each(|(total, sum)| *total += sum);
         }
         total
     }

@@ -53,7 +53,8 @@ impl Bitmap {
 
     /// Whether pixel (x, y) is in the set; `false` outside the rectangle.
     pub fn has(&self, x: i32, y: i32) -> bool {
-        let inside = x >= 0 && y >= 0 && (x as usize) < self.width_px && (y as usize) < self.height_px;
+        let inside =
+            x >= 0 && y >= 0 && (x as usize) < self.width_px && (y as usize) < self.height_px;
         inside && self.row(y as usize)[x as usize / 64] >> (x as usize % 64) & 1 != 0
     }
 
@@ -95,7 +96,11 @@ impl Bitmap {
         debug_assert!(x.is_multiple_of(4) && bits < 16);
         if y < self.height_px && x < self.width_px {
             let room = self.width_px - x;
-            let bits = if room < 4 { bits & ((1 << room) - 1) } else { bits };
+            let bits = if room < 4 {
+                bits & ((1 << room) - 1)
+            } else {
+                bits
+            };
             let words = self.width_px.div_ceil(64);
             self.words[y * words + x / 64] |= bits << (x % 64);
         }
@@ -103,12 +108,18 @@ impl Bitmap {
 
     /// How many pixels are in the set.
     pub fn count(&self) -> u64 {
-        self.words.iter().map(|word| u64::from(word.count_ones())).sum()
+        self.words
+            .iter()
+            .map(|word| u64::from(word.count_ones()))
+            .sum()
     }
 
     /// How many pixels are in both sets, which must have the same size.
     pub fn count_common(&self, other: &Self) -> u64 {
-        assert_eq!((self.width_px, self.height_px), (other.width_px, other.height_px));
+        assert_eq!(
+            (self.width_px, self.height_px),
+            (other.width_px, other.height_px)
+        );
         let pairs = self.words.iter().zip(&other.words);
         pairs.map(|(a, b)| u64::from((a & b).count_ones())).sum()
     }
@@ -118,7 +129,8 @@ impl Bitmap {
         assert_eq!((a.width_px, a.height_px), (b.width_px, b.height_px));
         (self.width_px, self.height_px) = (a.width_px, a.height_px);
         self.words.clear();
-        self.words.extend(a.words.iter().zip(&b.words).map(|(a, b)| a & !b));
+        self.words
+            .extend(a.words.iter().zip(&b.words).map(|(a, b)| a & !b));
     }
 
     /// Makes `to` the rectangle's pixels that are not in `set`, and returns it.
@@ -141,13 +153,16 @@ impl Bitmap {
         let across = |y: usize, word: usize| {
             let row = self.row(y);
             let before = if word > 0 { row[word - 1] >> 63 } else { 0 };
-            let after = if word + 1 < words { row[word + 1] << 63 } else { 0 };
+            let after = if word + 1 < words {
+                row[word + 1] << 63
+            } else {
+                0
+            };
             row[word] & (row[word] << 1 | before) & (row[word] >> 1 | after)
         };
         let inner = |y: usize| {
-            let eroded = (0..words).map(move |word| {
-                across(y - 1, word) & across(y, word) & across(y + 1, word)
-            });
+            let eroded = (0..words)
+                .map(move |word| across(y - 1, word) & across(y, word) & across(y + 1, word));
             eroded.map(|word| u64::from(word.count_ones())).sum::<u64>()
         };
         (1..self.height_px.saturating_sub(1)).map(inner).sum()
@@ -326,7 +341,10 @@ pub(crate) mod tests {
     fn a_region_has_the_published_area_box_and_moments() {
         let (region, _) = sample().to_region().unwrap();
         assert_eq!(region.area_px, 72);
-        assert_eq!((region.x_min, region.y_min, region.x_max, region.y_max), (0, 0, 18, 10));
+        assert_eq!(
+            (region.x_min, region.y_min, region.x_max, region.y_max),
+            (0, 0, 18, 10)
+        );
         assert!((region.centroid_y - 5.666_666_666_666_667).abs() < 1e-12);
         assert!((region.centroid_x - 9.444_444_444_444_445).abs() < 1e-12);
         assert!((region.mu02 - 436.0).abs() < 1e-9);

@@ -136,7 +136,11 @@ fn build_envelope(parabolas: &mut Vec<Parabola>, row: &[u16], to: To) {
         push(parabolas, -1, 0);
     }
     for (x, &distance) in row.iter().enumerate().filter(|&(_, &d)| d != NEVER) {
-        push(parabolas, x as i64, i64::from(distance) * i64::from(distance));
+        push(
+            parabolas,
+            x as i64,
+            i64::from(distance) * i64::from(distance),
+        );
     }
     if to == To::Background {
         push(parabolas, row.len() as i64, 0);
@@ -197,7 +201,9 @@ mod tests {
                 complement.insert(x as usize, y as usize);
             }
         }
-        let squared = DistanceTransform::default().to_foreground(&complement).to_vec();
+        let squared = DistanceTransform::default()
+            .to_foreground(&complement)
+            .to_vec();
         assert_eq!(squared, published.concat());
     }
 
@@ -206,7 +212,9 @@ mod tests {
         let all = || (-1..=h).flat_map(move |y| (-1..=w).map(move |x| (x, y)));
         let targets: Vec<_> = all().filter(|&(x, y)| set.has(x, y) == target).collect();
         let nearest = |x: i32, y: i32| {
-            let squares = targets.iter().map(|&(u, v)| ((u - x).pow(2) + (v - y).pow(2)) as u32);
+            let squares = targets
+                .iter()
+                .map(|&(u, v)| ((u - x).pow(2) + (v - y).pow(2)) as u32);
             squares.min().unwrap_or(NOWHERE)
         };
         (0..w * h).map(|i| nearest(i % w, i / w)).collect()

@@ -32,7 +32,9 @@ impl Outline {
     fn round(x: f64, y: f64, radius: f64) -> Vec<(f64, f64)> {
         let corner = |i| TAU * f64::from(i) / 90.0;
         let corners = (0..90).map(corner);
-        corners.map(|a: f64| (x + radius * a.cos(), y + radius * a.sin())).collect()
+        corners
+            .map(|a: f64| (x + radius * a.cos(), y + radius * a.sin()))
+            .collect()
     }
 
     pub(crate) fn disc(radius: f64) -> Self {
@@ -47,7 +49,11 @@ impl Outline {
     pub(crate) fn star(radius: f64) -> Self {
         let corner = |i: u32| {
             let (sin, cos) = (TAU * f64::from(i) / 10.0).sin_cos();
-            let radius = if i.is_multiple_of(2) { radius } else { 0.5 * radius };
+            let radius = if i.is_multiple_of(2) {
+                radius
+            } else {
+                0.5 * radius
+            };
             (radius * cos, radius * sin)
         };
         Self::new(vec![(0..10).map(corner).collect()])
@@ -62,7 +68,10 @@ impl Outline {
         let angle = |&(x, y): &(f64, f64)| f64::atan2(y, x);
         let mut outer = Self::round(0.0, 0.0, radius);
         outer.retain(|corner| !(low.asin()..=high.asin()).contains(&angle(corner)));
-        let at = outer.iter().position(|corner| angle(corner) > high.asin()).unwrap_or(0);
+        let at = outer
+            .iter()
+            .position(|corner| angle(corner) > high.asin())
+            .unwrap_or(0);
         outer.splice(at..at, tab.map(|(x, y)| (x * radius, y * radius)));
         Self::new(vec![outer, Self::round(0.0, 0.0, 0.55 * radius)])
     }
@@ -119,7 +128,10 @@ pub(crate) fn silhouette(outline: &Outline, mm_per_px: f64) -> (Silhouette, (f64
     let half = outline.reach.ceil() as usize + 3;
     let side = 2 * half + 1;
     let share = |i: usize| {
-        let (x, y) = ((i % side) as f64 - half as f64, (i / side) as f64 - half as f64);
+        let (x, y) = (
+            (i % side) as f64 - half as f64,
+            (i / side) as f64 - half as f64,
+        );
         let offset = |k: i32| (f64::from(k) + 0.5) / 8.0 - 0.5;
         let covered = (0..64).filter(|k| outline.has(x + offset(k % 8), y + offset(k / 8)));
         (covered.count() as f64 / 64.0 * 255.0).round() as u8

@@ -12,7 +12,11 @@ pub(super) fn collect(region: &Region, runs: &[Run], points: &mut Vec<[f32; 2]>)
     for_each_crack(runs, |_, _, length| count += length);
     // An odd step, since a row of a plain shape has two points, left and right.
     let step = (count / MOST_POINTS) | 1;
-    let step = if count / step > MOST_POINTS { step + 2 } else { step };
+    let step = if count / step > MOST_POINTS {
+        step + 2
+    } else {
+        step
+    };
     points.clear();
     points.reserve(MOST_POINTS);
     let mut next = 0;
@@ -54,7 +58,10 @@ fn for_each_crack(runs: &[Run], mut crack: impl FnMut(i64, i64, usize)) {
 /// The columns that are covered in exactly one of two rows.
 fn between(above: &[Run], below: &[Run], y: i64, crack: &mut impl FnMut(i64, i64, usize)) {
     let end = |row: &[Run], i: usize| {
-        row.get(i / 2).map_or(u32::MAX, |run| if i % 2 == 0 { run.x0 } else { run.x1 })
+        row.get(i / 2).map_or(
+            u32::MAX,
+            |run| if i.is_multiple_of(2) { run.x0 } else { run.x1 },
+        )
     };
     let (mut i, mut j) = (0, 0);
     let mut from = None;
@@ -121,7 +128,11 @@ mod tests {
         let (region, runs) = comb.to_region().unwrap();
         let mut points = Vec::new();
         collect(&region, &runs, &mut points);
-        assert!((1800..=MOST_POINTS).contains(&points.len()), "{}", points.len());
+        assert!(
+            (1800..=MOST_POINTS).contains(&points.len()),
+            "{}",
+            points.len()
+        );
         let left = points.iter().filter(|p| p[0] < 999.0).count();
         assert!(left.abs_diff(points.len() / 2) < 50);
     }

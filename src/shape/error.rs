@@ -11,7 +11,9 @@ pub enum ShapeError {
     #[error("the shape has no pixel that most parts cover (brighter than 127)")]
     Empty,
     /// More pixels than are allowed.
-    #[error("the shape would have {width_px} x {height_px} px; at most {MAX_SIDE_PX} x {MAX_SIDE_PX} px are allowed")]
+    #[error(
+        "the shape would have {width_px} x {height_px} px; at most {MAX_SIDE_PX} x {MAX_SIDE_PX} px are allowed"
+    )]
     TooLarge {
         /// Columns.
         width_px: u64,

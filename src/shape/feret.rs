@@ -26,7 +26,8 @@ impl Hull {
     pub(super) fn reserve(&mut self, height_px: usize) {
         let rows = 2 * height_px + 1;
         self.rows.reserve(rows.saturating_sub(self.rows.len()));
-        self.corners.reserve(2 * rows.saturating_sub(self.corners.len()));
+        self.corners
+            .reserve(2 * rows.saturating_sub(self.corners.len()));
     }
 
     /// `runs` are the region's.
@@ -46,7 +47,11 @@ impl Hull {
         for run in runs {
             let row = 2 * (run.y - region.y_min) as usize;
             let (first, last) = (2 * i64::from(run.x0), 2 * i64::from(run.x1) - 2);
-            for (row, first, last) in [(row, first, last), (row + 1, first - 1, last + 1), (row + 2, first, last)] {
+            for (row, first, last) in [
+                (row, first, last),
+                (row + 1, first - 1, last + 1),
+                (row + 2, first, last),
+            ] {
                 let ends = &mut self.rows[row];
                 *ends = [ends[0].min(first), ends[1].max(last)];
             }
@@ -57,7 +62,8 @@ impl Hull {
     /// dimensions", Information Processing Letters 9 (1979), down the left ends and up the right ones.
     fn wrap(&mut self) {
         self.corners.clear();
-        let filled = |(y, ends): (usize, &[i64; 2])| (ends[0] <= ends[1]).then_some((y as i64, *ends));
+        let filled =
+            |(y, ends): (usize, &[i64; 2])| (ends[0] <= ends[1]).then_some((y as i64, *ends));
         for (y, ends) in self.rows.iter().enumerate().filter_map(filled) {
             push(&mut self.corners, 0, [ends[0], y]);
         }
@@ -90,13 +96,23 @@ impl Hull {
             across.unwrap_or(0) as f64 / length
         });
         let narrowest = widths.fold(f64::INFINITY, f64::min);
-        if narrowest.is_finite() { narrowest } else { 0.0 }
+        if narrowest.is_finite() {
+            narrowest
+        } else {
+            0.0
+        }
     }
 }
 
 /// Adds a corner, dropping those behind `keep` that it makes a dent or a straight line.
 fn push(corners: &mut Vec<[i64; 2]>, keep: usize, corner: [i64; 2]) {
-    while corners.len() > keep + 1 && cross(corners[corners.len() - 2], corners[corners.len() - 1], corner) >= 0 {
+    while corners.len() > keep + 1
+        && cross(
+            corners[corners.len() - 2],
+            corners[corners.len() - 1],
+            corner,
+        ) >= 0
+    {
         corners.pop();
     }
     if corners.last() != Some(&corner) {

@@ -39,7 +39,8 @@ impl Field {
         let grid = Grid::new(silhouette, margin);
         let (width, height) = (grid.width - 1, grid.height - 1);
         let cell = |i: usize| {
-            let at = |dx: usize, dy: usize| grid.values[(i / width + dy) * grid.width + i % width + dx];
+            let at =
+                |dx: usize, dy: usize| grid.values[(i / width + dy) * grid.width + i % width + dx];
             let [a, b, c, d] = [at(0, 0), at(1, 0), at(0, 1), at(1, 1)];
             [a, b - a, c - a, a - b - c + d]
         };
@@ -97,7 +98,10 @@ struct Grid {
 
 impl Grid {
     fn new(silhouette: &Silhouette, margin: usize) -> Self {
-        let (width, height) = (silhouette.width_px + 2 * margin, silhouette.height_px + 2 * margin);
+        let (width, height) = (
+            silhouette.width_px + 2 * margin,
+            silhouette.height_px + 2 * margin,
+        );
         let signed = fine_signed(silhouette, margin);
         // Every pixel's centre lies between four fine pixels.
         let value = |x: usize, y: usize| {
@@ -108,7 +112,9 @@ impl Grid {
             width,
             height,
             margin: margin as f64,
-            values: (0..width * height).map(|i| value(i % width, i / width)).collect(),
+            values: (0..width * height)
+                .map(|i| value(i % width, i / width))
+                .collect(),
             edge_px: 0.0,
         };
         grid.sharpen(silhouette);
@@ -119,14 +125,22 @@ impl Grid {
     fn sharpen(&mut self, silhouette: &Silhouette) {
         let mut nearest = vec![f64::INFINITY; self.values.len()];
         let (columns, rows) = (silhouette.width_px as i32, silhouette.height_px as i32);
-        for (column, row) in (-1..rows).flat_map(|row| (-1..columns).map(move |column| (column, row))) {
-            for [a, b] in pieces(silhouette, f64::from(column), f64::from(row)).into_iter().flatten() {
+        for (column, row) in
+            (-1..rows).flat_map(|row| (-1..columns).map(move |column| (column, row)))
+        {
+            for [a, b] in pieces(silhouette, f64::from(column), f64::from(row))
+                .into_iter()
+                .flatten()
+            {
                 self.edge_px += (b.0 - a.0).hypot(b.1 - a.1);
                 self.offer(a, b, &mut nearest);
             }
         }
         for (i, &distance) in nearest.iter().enumerate().filter(|&(_, &d)| d <= NEAR_PX) {
-            let (x, y) = ((i % self.width) as f64 - self.margin, (i / self.width) as f64 - self.margin);
+            let (x, y) = (
+                (i % self.width) as f64 - self.margin,
+                (i / self.width) as f64 - self.margin,
+            );
             let inside = silhouette.share_at(x, y) >= MAJORITY;
             self.values[i] = if inside { -distance } else { distance } as f32;
         }
@@ -169,7 +183,9 @@ fn pieces(silhouette: &Silhouette, x: f64, y: f64) -> [Option<Piece>; 2] {
     for i in 0..4 {
         if shares[i] >= 0.0 && shares[(i + 1) % 4] < 0.0 {
             let back = (1..4).map(|k| (i + 4 - k) % 4);
-            let other = back.into_iter().find(|&j| shares[j] < 0.0 && shares[(j + 1) % 4] >= 0.0);
+            let other = back
+                .into_iter()
+                .find(|&j| shares[j] < 0.0 && shares[(j + 1) % 4] >= 0.0);
             found[next] = other.map(|j| [crossing(i), crossing(j)]);
             next += 1;
         }
@@ -180,7 +196,11 @@ fn pieces(silhouette: &Silhouette, x: f64, y: f64) -> [Option<Piece>; 2] {
 fn to_piece(at: (f64, f64), a: (f64, f64), b: (f64, f64)) -> f64 {
     let (along, from) = ((b.0 - a.0, b.1 - a.1), (at.0 - a.0, at.1 - a.1));
     let square = along.0 * along.0 + along.1 * along.1;
-    let part = if square > 0.0 { (from.0 * along.0 + from.1 * along.1) / square } else { 0.0 };
+    let part = if square > 0.0 {
+        (from.0 * along.0 + from.1 * along.1) / square
+    } else {
+        0.0
+    };
     let part = part.clamp(0.0, 1.0);
     (from.0 - part * along.0).hypot(from.1 - part * along.1)
 }
@@ -206,7 +226,9 @@ fn fine_signed(silhouette: &Silhouette, margin: usize) -> Vec<f32> {
     let outside: Vec<f32> = transform.to_foreground(&set).iter().map(distance).collect();
     let inside = transform.to_background(&set).iter().map(distance);
     let pairs = inside.zip(outside);
-    pairs.map(|(inside, outside)| if inside > 0.0 { -inside } else { outside }).collect()
+    pairs
+        .map(|(inside, outside)| if inside > 0.0 { -inside } else { outside })
+        .collect()
 }
 
 #[cfg(test)]
@@ -231,9 +253,15 @@ mod tests {
             let error = distance - (radius - 30.0);
             let turned = (slope_x - cos).hypot(slope_y - sin);
             if (25.0..=35.0).contains(&radius) {
-                assert!(error.abs() < 0.12 && turned < 0.15, "{error} {turned} at {radius}");
+                assert!(
+                    error.abs() < 0.12 && turned < 0.15,
+                    "{error} {turned} at {radius}"
+                );
             }
-            assert!(error.abs() < 0.4 && turned < 0.4, "{error} {turned} at {radius}");
+            assert!(
+                error.abs() < 0.4 && turned < 0.4,
+                "{error} {turned} at {radius}"
+            );
         }
     }
 
@@ -241,7 +269,19 @@ mod tests {
     fn every_place_has_a_distance() {
         let (silhouette, centre) = drawn::silhouette(&Outline::disc(9.0), 1.0);
         let field = Field::new(&silhouette);
-        for at in [-1e30, -1e9, -16.0, -15.5, 0.0, 12.5, 38.0, 39.0, 1e9, 1e30, f64::NAN] {
+        for at in [
+            -1e30,
+            -1e9,
+            -16.0,
+            -15.5,
+            0.0,
+            12.5,
+            38.0,
+            39.0,
+            1e9,
+            1e30,
+            f64::NAN,
+        ] {
             assert!(sample(&field, at, 0.0)[0].is_finite());
             assert!(sample(&field, 0.0, at)[0].is_finite());
         }

@@ -31,6 +31,7 @@ impl Gauge {
         let missing = pixels.saturating_sub(self.distances.values.len());
         self.distances.values.reserve(missing);
         self.flaws.reserve(width_px, height_px);
+        self.patches.reserve(height_px);
     }
 
     /// `(missing, excess)`; patches of fewer than `flaw_below_px` pixels are ignored.
@@ -62,7 +63,11 @@ impl Gauge {
         self.distances.measure(t, to);
         let (squared, at) = farthest(&self.distances, &self.flaws, count);
         Depth {
-            px: if squared == NOWHERE { f64::INFINITY } else { f64::from(squared).sqrt() },
+            px: if squared == NOWHERE {
+                f64::INFINITY
+            } else {
+                f64::from(squared).sqrt()
+            },
             at: Some((at.0 as i32, at.1 as i32)),
         }
     }
@@ -76,7 +81,10 @@ fn farthest(distances: &ColumnDistances, set: &Bitmap, count: u64) -> (u32, (usi
     // A few pixels spread over the set first, so that most others are ruled out without a look-up.
     let stride = (count / 64 + 1) as usize;
     let spread = set.pixels().step_by(stride);
-    let mut largest = spread.map(|(x, y)| distances.squared(x, y)).max().unwrap_or(0);
+    let mut largest = spread
+        .map(|(x, y)| distances.squared(x, y))
+        .max()
+        .unwrap_or(0);
     let mut found = None;
     for y in 0..set.height_px() {
         for (x0, x1) in set.runs(y) {
@@ -84,7 +92,8 @@ fn farthest(distances: &ColumnDistances, set: &Bitmap, count: u64) -> (u32, (usi
             for x in x0..x1 {
                 bound = bound.saturating_add(1).min(distances.within_column(x, y));
                 let bound_squared = bound.saturating_mul(bound);
-                let hopeless = bound_squared < largest || (bound_squared == largest && found.is_some());
+                let hopeless =
+                    bound_squared < largest || (bound_squared == largest && found.is_some());
                 if hopeless {
                     continue;
                 }
@@ -144,7 +153,10 @@ mod tests {
         let mut transform = DistanceTransform::default();
         let largest = |of: &Bitmap, without: &Bitmap, squared: &[u32]| {
             let mut depth = Depth::default();
-            for (x, y) in of.pixels().filter(|&(x, y)| !without.has(x as i32, y as i32)) {
+            for (x, y) in of
+                .pixels()
+                .filter(|&(x, y)| !without.has(x as i32, y as i32))
+            {
                 let px = f64::from(squared[y * t.width_px() + x]).sqrt();
                 if px > depth.px {
                     depth = Depth {
@@ -155,8 +167,8 @@ mod tests {
             }
             depth
         };
-        let missing = largest(t, a, &transform.to_background(t).to_vec());
-        let excess = largest(a, t, &transform.to_foreground(t).to_vec());
+        let missing = largest(t, a, transform.to_background(t));
+        let excess = largest(a, t, transform.to_foreground(t));
         (missing, excess)
     }
 

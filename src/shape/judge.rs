@@ -45,11 +45,20 @@ impl Judge {
     /// `shapes` must have the picture's scale, and a majority each; there must be at least one.
     pub fn new(shapes: Vec<(Silhouette, Limits)>, common: Common) -> Self {
         assert!(!shapes.is_empty(), "there must be a shape to judge by");
-        let ready = shapes.into_iter().map(|(silhouette, limits)| (Model::new(silhouette), limits));
+        let ready = shapes
+            .into_iter()
+            .map(|(silhouette, limits)| (Model::new(silhouette), limits));
         let shapes: Vec<(Model, Limits)> = ready.collect();
-        let largest_px = shapes.iter().map(|(model, _)| model.radius_px).fold(0.0, f64::max);
+        let largest_px = shapes
+            .iter()
+            .map(|(model, _)| model.radius_px)
+            .fold(0.0, f64::max);
         let mut judge = Self {
-            smallest_px: shapes.iter().map(|(model, _)| model.area_px).min().unwrap_or(0),
+            smallest_px: shapes
+                .iter()
+                .map(|(model, _)| model.area_px)
+                .min()
+                .unwrap_or(0),
             order: Vec::with_capacity(shapes.len()),
             shapes,
             common,
@@ -66,7 +75,11 @@ impl Judge {
 
     /// Makes room for regions of up to this size beyond the shapes' own, so that judging them needs no new memory.
     pub fn reserve(&mut self, width_px: usize, height_px: usize) {
-        let reach = self.shapes.iter().map(|(model, _)| model.radius_px).fold(0.0, f64::max);
+        let reach = self
+            .shapes
+            .iter()
+            .map(|(model, _)| model.radius_px)
+            .fold(0.0, f64::max);
         let margin = 2 * reach.ceil() as usize + 8;
         let (width, height) = (width_px + margin, height_px + margin);
         self.overlay.reserve(width, height);
@@ -86,7 +99,9 @@ impl Judge {
     /// nothing about a part, so there are no further reasons.
     pub fn judge(&mut self, region: &Region, runs: &[Run]) -> Judged {
         let (shape, found) = self.best(region, runs);
-        let (missing, excess) = self.overlay.gauge(&mut self.gauge, self.common.flaw_below_px);
+        let (missing, excess) = self
+            .overlay
+            .gauge(&mut self.gauge, self.common.flaw_below_px);
         let mut against = Against::default();
         let twice = 2 * self.overlay.outside_px() >= self.smallest_px;
         if twice && self.overlay.covered() >= self.common.fit_at_least {
@@ -159,7 +174,8 @@ impl Judge {
         }
         let (shape, found) = best.unwrap_or((0, Found::default()));
         if placed != shape {
-            self.overlay.place(region, runs, &self.shapes[shape].0, found.pose);
+            self.overlay
+                .place(region, runs, &self.shapes[shape].0, found.pose);
         }
         (shape, found)
     }
@@ -171,8 +187,10 @@ impl Judge {
         };
         self.order.clear();
         let shapes = self.shapes.iter().enumerate();
-        self.order.extend(shapes.map(|(shape, (model, _))| (bound(model), shape)));
-        self.order.sort_unstable_by(|a, b| b.0.total_cmp(&a.0).then(a.1.cmp(&b.1)));
+        self.order
+            .extend(shapes.map(|(shape, (model, _))| (bound(model), shape)));
+        self.order
+            .sort_unstable_by(|a, b| b.0.total_cmp(&a.0).then(a.1.cmp(&b.1)));
     }
 }
 
@@ -248,7 +266,11 @@ mod tests {
         for (shape, outline) in [star(), Outline::gasket(60.0)].iter().enumerate() {
             for angle in [0.0, 11.0, 45.0, 90.0, 200.0, 359.0] {
                 let found = judged(&mut judge, &outline.draw(at(angle, false), &[], (200, 200)));
-                assert_eq!((found.shape, found.reasons.is_empty()), (shape, true), "{found:?}");
+                assert_eq!(
+                    (found.shape, found.reasons.is_empty()),
+                    (shape, true),
+                    "{found:?}"
+                );
                 assert!(found.severity <= 1.0 && found.fit > 0.98 && !found.pose.flipped);
                 assert!(found.missing.px < 2.0 && found.excess.px < 2.0, "{found:?}");
             }
@@ -269,10 +291,19 @@ mod tests {
             y: 0.0,
             radius: 12.0,
         };
-        assert_eq!(reasons(&mut judge, &gasket, at(30.0, false), &[bite]), "missing");
-        assert_eq!(reasons(&mut judge, &gasket, at(30.0, false), &[burr]), "excess");
+        assert_eq!(
+            reasons(&mut judge, &gasket, at(30.0, false), &[bite]),
+            "missing"
+        );
+        assert_eq!(
+            reasons(&mut judge, &gasket, at(30.0, false), &[burr]),
+            "excess"
+        );
         assert_eq!(reasons(&mut judge, &gasket, at(30.0, true), &[]), "flipped");
-        assert_eq!(reasons(&mut judge, &gasket, at(30.0, true), &[burr]), "excess+flipped");
+        assert_eq!(
+            reasons(&mut judge, &gasket, at(30.0, true), &[burr]),
+            "excess+flipped"
+        );
         assert_eq!(reasons(&mut judge, &star(), at(30.0, true), &[]), "");
         let whole = Outline::disc(85.0);
         assert_eq!(reasons(&mut judge, &whole, at(0.0, false), &[]), "touching");
@@ -300,7 +331,10 @@ mod tests {
             y: 20.0,
             radius: 25.0,
         };
-        assert_eq!(reasons(&mut judge, &star(), at(10.0, false), &[burr]), "excess");
+        assert_eq!(
+            reasons(&mut judge, &star(), at(10.0, false), &[burr]),
+            "excess"
+        );
     }
 
     #[test]
@@ -320,7 +354,10 @@ mod tests {
         let (region, runs) = picture.to_region().unwrap();
         let found = judge.judge(&region, &runs);
         // The deepest pixels of a bite in a ring lie where it is farthest from both its sides, up to the bite's radius.
-        assert!(found.missing.px > 13.0 && found.missing.px < 15.0, "{found:?}");
+        assert!(
+            found.missing.px > 13.0 && found.missing.px < 15.0,
+            "{found:?}"
+        );
         assert!((found.excess.px - 15.0).abs() <= 1.4, "{found:?}");
         let near = |at: Option<(i32, i32)>, x: f64, y: f64| {
             at.is_some_and(|at| (f64::from(at.0) - x).hypot(f64::from(at.1) - y) < 6.0)
@@ -329,9 +366,14 @@ mod tests {
         assert!(near(found.excess.at, 101.3, 98.6 + 75.0), "{found:?}");
 
         let drawing = judge.drawing(&region, &runs, &found);
-        let local = |at: Option<(i32, i32)>| at.map(|(x, y)| (x - drawing.origin.0, y - drawing.origin.1)).unwrap();
+        let local = |at: Option<(i32, i32)>| {
+            at.map(|(x, y)| (x - drawing.origin.0, y - drawing.origin.1))
+                .unwrap()
+        };
         let (missing, excess) = (local(found.missing.at), local(found.excess.at));
-        assert!(drawing.missing.has(missing.0, missing.1) && drawing.taught.has(missing.0, missing.1));
+        assert!(
+            drawing.missing.has(missing.0, missing.1) && drawing.taught.has(missing.0, missing.1)
+        );
         assert!(drawing.excess.has(excess.0, excess.1) && drawing.part.has(excess.0, excess.1));
         assert_eq!(drawing.part.count(), region.area_px);
         assert_eq!(drawing.excess.count_common(&drawing.taught), 0);
@@ -341,8 +383,12 @@ mod tests {
     #[test]
     fn verdicts_do_not_depend_on_what_came_before() {
         let mut used = judge();
-        let pictures = [0.0, 33.0, 71.0].map(|angle| star().draw(at(angle, false), &[], (200, 200)));
-        let first: Vec<_> = pictures.iter().map(|picture| judged(&mut used, picture)).collect();
+        let pictures =
+            [0.0, 33.0, 71.0].map(|angle| star().draw(at(angle, false), &[], (200, 200)));
+        let first: Vec<_> = pictures
+            .iter()
+            .map(|picture| judged(&mut used, picture))
+            .collect();
         for (picture, first) in pictures.iter().zip(&first).rev() {
             assert_eq!(&judged(&mut used, picture), first);
             assert_eq!(&judged(&mut judge(), picture), first);

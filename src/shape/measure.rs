@@ -40,6 +40,7 @@ impl Measurer {
         self.set.reserve(width_px, height_px);
         self.scratch.reserve(width_px, height_px);
         self.hull.reserve(height_px);
+        self.patches.reserve(height_px);
         self.skeleton.reserve(width_px, height_px);
     }
 
@@ -85,10 +86,17 @@ impl Measurer {
     /// The region with an empty border of one pixel.
     fn crop(&mut self, region: &Region, runs: &[Run]) {
         let side = |low: u32, high: u32| (high - low) as usize + 2;
-        self.set.reset(side(region.x_min, region.x_max), side(region.y_min, region.y_max));
+        self.set.reset(
+            side(region.x_min, region.x_max),
+            side(region.y_min, region.y_max),
+        );
         for run in runs {
             let column = |x: u32| (x - region.x_min) as usize + 1;
-            self.set.insert_run((run.y - region.y_min) as usize + 1, column(run.x0), column(run.x1));
+            self.set.insert_run(
+                (run.y - region.y_min) as usize + 1,
+                column(run.x0),
+                column(run.x1),
+            );
         }
     }
 }
@@ -113,7 +121,15 @@ mod tests {
     /// row end and column end, less those that are both.
     #[test]
     fn digital_discs_have_their_counted_pixels() {
-        for (r, pixels) in [(1, 5), (2, 13), (3, 29), (5, 81), (10, 317), (25, 1961), (100, 31_417)] {
+        for (r, pixels) in [
+            (1, 5),
+            (2, 13),
+            (3, 29),
+            (5, 81),
+            (10, 317),
+            (25, 1961),
+            (100, 31_417),
+        ] {
             let side = 2 * r as usize + 1;
             let mut disc = Bitmap::new(side, side);
             for (x, y) in (0..side * side).map(|i| (i % side, i / side)) {

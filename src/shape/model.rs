@@ -36,7 +36,11 @@ impl Model {
             Some([first, last].map(|x| (x as f64 - centroid.0, y as f64 - centroid.1)))
         });
         let rim: Vec<_> = ends.flatten().collect();
-        let deepest = DistanceTransform::default().to_background(&majority).iter().max().copied();
+        let deepest = DistanceTransform::default()
+            .to_background(&majority)
+            .iter()
+            .max()
+            .copied();
         let field = Field::new(&silhouette);
         let mut model = Self {
             symmetry: Symmetry::NONE,
@@ -94,14 +98,22 @@ impl Model {
         let reach = self.radius_px + 2.0;
         let low = |at: f64| (at - reach).floor() as i32;
         let high = |at: f64| (at + reach).ceil() as i32;
-        [low(pose.x_px), low(pose.y_px), high(pose.x_px), high(pose.y_px)]
+        [
+            low(pose.x_px),
+            low(pose.y_px),
+            high(pose.x_px),
+            high(pose.y_px),
+        ]
     }
 }
 
 /// Across an edge that is normally distributed with standard deviation s, the integral of 4 p (1 - p) is 4 s / sqrt(pi).
 /// An edge that is sharp still differs by the 0.29 px that pixels cannot tell.
 fn spread_px(silhouette: &Silhouette, field: &Field) -> f64 {
-    let shares = silhouette.share.iter().map(|&share| f64::from(share) / 255.0);
+    let shares = silhouette
+        .share
+        .iter()
+        .map(|&share| f64::from(share) / 255.0);
     let soft: f64 = shares.map(|p| 4.0 * p * (1.0 - p)).sum();
     (soft / field.edge_px().max(1.0) * std::f64::consts::PI.sqrt() / 4.0).max(0.29)
 }

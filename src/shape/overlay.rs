@@ -27,7 +27,10 @@ impl Overlay {
     pub(super) fn place(&mut self, region: &Region, runs: &[Run], model: &Model, pose: Pose) {
         let [left, top, right, bottom] = model.bounds(pose);
         let (left, top) = (left.min(region.x_min as i32), top.min(region.y_min as i32));
-        let (right, bottom) = (right.max(region.x_max as i32), bottom.max(region.y_max as i32));
+        let (right, bottom) = (
+            right.max(region.x_max as i32),
+            bottom.max(region.y_max as i32),
+        );
         self.origin = (left - 1, top - 1);
         let size = ((right - left + 3) as usize, (bottom - top + 3) as usize);
         self.taught.reset(size.0, size.1);
@@ -63,7 +66,9 @@ impl Overlay {
     pub(super) fn gauge(&self, gauge: &mut Gauge, flaw_below_px: f64) -> (Depth, Depth) {
         let (missing, excess) = gauge.both(&self.taught, &self.part, flaw_below_px);
         let in_picture = |depth: Depth| Depth {
-            at: depth.at.map(|(x, y)| (x + self.origin.0, y + self.origin.1)),
+            at: depth
+                .at
+                .map(|(x, y)| (x + self.origin.0, y + self.origin.1)),
             ..depth
         };
         (in_picture(missing), in_picture(excess))

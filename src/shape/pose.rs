@@ -23,7 +23,7 @@ pub struct Found {
 }
 
 /// How many poses are looked at with all points in the end, at most.
-const FINALISTS: usize = 6;
+const FINALISTS: usize = 4;
 /// Points for coarse work.
 const FEW: usize = 96;
 /// Distances above this are all the same once the pose is fine.
@@ -86,7 +86,10 @@ impl Finder {
     }
 
     fn lowest_cost(&self) -> f64 {
-        self.finalists.as_slice().first().map_or(f64::INFINITY, |&(cost, _)| cost)
+        self.finalists
+            .as_slice()
+            .first()
+            .map_or(f64::INFINITY, |&(cost, _)| cost)
     }
 
     /// Starts at the region's centroid.
@@ -168,7 +171,11 @@ impl Finder {
     /// the best are finished.
     fn decide(&self, search: &Search, overlay: &mut Overlay) -> Found {
         let within = 1.3 * self.lowest_cost() + 0.01;
-        let likely = self.finalists.as_slice().iter().filter(|(cost, _)| *cost <= within);
+        let likely = self
+            .finalists
+            .as_slice()
+            .iter()
+            .filter(|(cost, _)| *cost <= within);
         let mut fits = [0.0_f64; FINALISTS];
         let only = likely.clone().count() == 1;
         if !only {

@@ -40,19 +40,27 @@ impl Taught {
 
     fn find(&mut self, picture: &Bitmap) -> Found {
         let (region, runs) = picture.to_region().unwrap();
-        self.finder.find(&region, &runs, &self.model, &mut self.overlay)
+        self.finder
+            .find(&region, &runs, &self.model, &mut self.overlay)
     }
 
     fn miss(&self, found: Pose, drawn: Pose) -> Miss {
         let (sin, cos) = drawn.angle_deg.to_radians().sin_cos();
         let centroid = self.model.centroid;
         let side = if drawn.flipped { -1.0 } else { 1.0 };
-        let (u, v) = (side * (centroid.0 - self.centre.0), centroid.1 - self.centre.1);
+        let (u, v) = (
+            side * (centroid.0 - self.centre.0),
+            centroid.1 - self.centre.1,
+        );
         let x = drawn.x_px + cos * u - sin * v;
         let y = drawn.y_px + sin * u + cos * v;
         let symmetry = self.model.symmetry();
         let span = symmetry.span_deg();
-        let turn = if span > 0.0 { (found.angle_deg - drawn.angle_deg).rem_euclid(span) } else { 0.0 };
+        let turn = if span > 0.0 {
+            (found.angle_deg - drawn.angle_deg).rem_euclid(span)
+        } else {
+            0.0
+        };
         Miss {
             middle_px: (found.x_px - x).hypot(found.y_px - y),
             rim_px: turn.min(span - turn).to_radians() * self.model.radius_px,
@@ -112,7 +120,9 @@ fn spread(what: &str, misses: &[Miss]) -> Spread {
 
 /// More parts than usual are drawn if the environment variable POSES says so.
 fn count() -> u64 {
-    let asked = std::env::var("POSES").ok().and_then(|text| text.parse().ok());
+    let asked = std::env::var("POSES")
+        .ok()
+        .and_then(|text| text.parse().ok());
     asked.unwrap_or(40)
 }
 
@@ -146,9 +156,12 @@ fn stars_are_found_to_a_tenth_of_a_pixel() {
     let mut star = Taught::new(Outline::star(76.0));
     let good = spread("good stars", &star.misses(|_| Vec::new()));
     assert!(good.middle[3] <= 0.1 && good.rim[3] <= 0.2, "{good:?}");
-    let flawed = star.misses(|random| one_flaw(random, 76.0, 0.0..6.28));
+    let flawed = star.misses(|random| one_flaw(random, 76.0, 0.0..std::f64::consts::TAU));
     let flawed = spread("stars with a flaw", &flawed);
-    assert!(flawed.middle[3] <= 0.3 && flawed.rim[3] <= 0.3, "{flawed:?}");
+    assert!(
+        flawed.middle[3] <= 0.3 && flawed.rim[3] <= 0.3,
+        "{flawed:?}"
+    );
 }
 
 /// Its angle hangs on the tab alone, whose sides are 18 px long. When they lie within a few degrees of a row, a column or
@@ -163,14 +176,20 @@ fn gaskets_are_found_with_their_face() {
     assert!(good.rim[1] <= 0.2 && good.rim[3] <= 0.4, "{good:?}");
     let flawed = gasket.misses(|random| one_flaw(random, 60.0, 1.4..5.2));
     let flawed = spread("gaskets with a flaw", &flawed);
-    assert!(flawed.middle[3] <= 0.3 && flawed.wrong_faces == 0, "{flawed:?}");
+    assert!(
+        flawed.middle[3] <= 0.3 && flawed.wrong_faces == 0,
+        "{flawed:?}"
+    );
     assert!(flawed.rim[1] <= 0.3 && flawed.rim[3] <= 0.4, "{flawed:?}");
 }
 
 /// Of two parts that have grown together in any arrangement, the silhouette comes to lie on one.
 #[test]
 fn one_of_two_joined_parts_is_found() {
-    let pairs = [(Outline::star(76.0), 100.0..150.0), (Outline::gasket(60.0), 90.0..118.0)];
+    let pairs = [
+        (Outline::star(76.0), 100.0..150.0),
+        (Outline::gasket(60.0), 90.0..118.0),
+    ];
     for (outline, apart) in pairs {
         let mut taught = Taught::new(outline);
         for seed in 0..count() / 2 {
@@ -187,7 +206,10 @@ fn one_of_two_joined_parts_is_found() {
             let mut picture = taught.outline.draw(one, &[], (340, 340));
             taught.outline.add_to(&mut picture, other, &[]);
             let found = taught.find(&picture);
-            assert!(taught.overlay.covered() > 0.9, "{seed} {one:?} {other:?} {found:?}");
+            assert!(
+                taught.overlay.covered() > 0.9,
+                "{seed} {one:?} {other:?} {found:?}"
+            );
         }
     }
 }

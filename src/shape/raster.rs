@@ -93,10 +93,15 @@ impl Cells {
                 _ => 0,
             }
         };
-        let kinds: Vec<i16> = (0..columns * rows).map(|i| kind(i % columns, i / columns)).collect();
+        let kinds: Vec<i16> = (0..columns * rows)
+            .map(|i| kind(i % columns, i / columns))
+            .collect();
         let reach = |of: i16| chebyshev(&kinds, columns, rows, of);
         let (inside, outside) = (reach(1), reach(-1));
-        let reach = inside.iter().zip(&outside).map(|(inside, outside)| (inside - outside) as i8);
+        let reach = inside
+            .iter()
+            .zip(&outside)
+            .map(|(inside, outside)| (inside - outside) as i8);
         Self {
             columns,
             rows,
@@ -123,7 +128,10 @@ impl Cells {
 
 /// For cells of kind `of` the Chebyshev distance to the nearest cell of another kind, 0 for others.
 fn chebyshev(kinds: &[i16], columns: usize, rows: usize, of: i16) -> Vec<i16> {
-    let mut reach: Vec<i16> = kinds.iter().map(|&kind| if kind == of { FAR } else { 0 }).collect();
+    let mut reach: Vec<i16> = kinds
+        .iter()
+        .map(|&kind| if kind == of { FAR } else { 0 })
+        .collect();
     let order: Vec<usize> = (0..columns * rows).collect();
     let mut sweep = |i: usize, neighbours: [(isize, isize); 4]| {
         let (column, row) = ((i % columns) as isize, (i / columns) as isize);
@@ -161,7 +169,10 @@ pub(super) fn draw(
     let (half_u, half_v) = (half(&placement.u), half(&placement.v));
     for top in (0..to.height_px()).step_by(BLOCK) {
         for left in (0..to.width_px()).step_by(BLOCK) {
-            let (x, y) = (i64::from(origin.0) + left as i64, i64::from(origin.1) + top as i64);
+            let (x, y) = (
+                i64::from(origin.0) + left as i64,
+                i64::from(origin.1) + top as i64,
+            );
             let (u, v) = placement.inverse(x, y);
             // A block's pixels lie within 2.2 px of its middle, whatever the angle: in at most the third cell from there.
             match cells.reach_at(u + half_u, v + half_v) {
@@ -200,7 +211,12 @@ mod tests {
     use super::*;
     use proptest::prelude::*;
 
-    fn defined(silhouette: &Silhouette, placement: &Placement, origin: (i32, i32), size: usize) -> Bitmap {
+    fn defined(
+        silhouette: &Silhouette,
+        placement: &Placement,
+        origin: (i32, i32),
+        size: usize,
+    ) -> Bitmap {
         let mut drawn = Bitmap::new(size, size);
         for (x, y) in (0..size * size).map(|i| (i % size, i / size)) {
             let (u, v) = placement.inverse(origin.0 as i64 + x as i64, origin.1 as i64 + y as i64);
@@ -279,6 +295,12 @@ mod tests {
         let near = |a: (f64, f64), b: (f64, f64)| (a.0 - b.0).hypot(a.1 - b.1) < 1e-8;
         // A place to the right of the centroid comes to lie below it; mirrored, above it.
         assert!(near(offset(pose), (3.0, 0.0)));
-        assert!(near(offset(Pose { flipped: true, ..pose }), (-3.0, 0.0)));
+        assert!(near(
+            offset(Pose {
+                flipped: true,
+                ..pose
+            }),
+            (-3.0, 0.0)
+        ));
     }
 }

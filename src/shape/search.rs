@@ -36,7 +36,11 @@ impl<'a> Search<'a> {
         let thin = 1.5 * self.model.depth_px / self.model.radius_px.max(1.0);
         let step = thin.clamp(3_f64.to_radians(), 9_f64.to_radians());
         let needless = flipped && self.model.symmetry().mirror;
-        let count = if needless { 0 } else { (span / step).ceil().max(1.0) as u32 };
+        let count = if needless {
+            0
+        } else {
+            (span / step).ceil().max(1.0) as u32
+        };
         (0..count).map(move |i| span * f64::from(i) / f64::from(count))
     }
 
@@ -47,7 +51,10 @@ impl<'a> Search<'a> {
         let [left, top, right, bottom] = self.extent(angle, flipped);
         let region = self.region;
         let far = |low: u32, high: u32| f64::from(high - low) - 1.0;
-        let (width, height) = (far(region.x_min, region.x_max), far(region.y_min, region.y_max));
+        let (width, height) = (
+            far(region.x_min, region.x_max),
+            far(region.y_min, region.y_max),
+        );
         for x in [-left, width - right] {
             middles.extend([-top, height - bottom].map(|y| (x, y)));
         }
@@ -63,7 +70,12 @@ impl<'a> Search<'a> {
         let (sin, cos) = angle.sin_cos();
         let side = if flipped { -1.0 } else { 1.0 };
         let turned = |&(u, v): &(f64, f64)| (cos * side * u - sin * v, sin * side * u + cos * v);
-        let start = [f64::INFINITY, f64::INFINITY, f64::NEG_INFINITY, f64::NEG_INFINITY];
+        let start = [
+            f64::INFINITY,
+            f64::INFINITY,
+            f64::NEG_INFINITY,
+            f64::NEG_INFINITY,
+        ];
         self.model.rim.iter().map(turned).fold(start, |e, (x, y)| {
             [e[0].min(x), e[1].min(y), e[2].max(x), e[3].max(y)]
         })
@@ -92,7 +104,11 @@ impl<'a> Search<'a> {
     /// Whether the two are the same but for a pixel or two.
     pub(super) fn alike(&self, a: &Place, b: &Place) -> bool {
         let span = self.model.symmetry().span_deg().to_radians();
-        let turn = if span == 0.0 { 0.0 } else { (a.angle - b.angle).rem_euclid(span) };
+        let turn = if span == 0.0 {
+            0.0
+        } else {
+            (a.angle - b.angle).rem_euclid(span)
+        };
         let turn = turn.min(span - turn);
         a.flipped == b.flipped
             && (a.x - b.x).hypot(a.y - b.y) < 1.5

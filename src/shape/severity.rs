@@ -38,7 +38,11 @@ impl Against {
             self.reasons = self.reasons.with(reason);
         }
         // The quotient may be rounded to the wrong side of 1.
-        let used = if good { used.min(1.0) } else { used.max(1.0_f64.next_up()) };
+        let used = if good {
+            used.min(1.0)
+        } else {
+            used.max(1.0_f64.next_up())
+        };
         self.severity = self.severity.max(used);
     }
 
@@ -57,7 +61,9 @@ impl Against {
         if limits.length_px.is_some() || limits.width_px.is_some() {
             let (length, width) = measurer.feret(region, runs);
             for (figure, range) in [(length, limits.length_px), (width, limits.width_px)] {
-                range.into_iter().for_each(|range| self.between(figure, range));
+                range
+                    .into_iter()
+                    .for_each(|range| self.between(figure, range));
             }
         }
         if let Some(range) = limits.holes {
@@ -80,10 +86,18 @@ mod tests {
 
     #[test]
     fn both_ends_belong_to_the_good_ones() {
-        for (figure, good, severity) in [(2.0, true, 1.0), (3.0, true, 0.0), (4.0, true, 1.0), (4.5, false, 1.5)] {
+        for (figure, good, severity) in [
+            (2.0, true, 1.0),
+            (3.0, true, 0.0),
+            (4.0, true, 1.0),
+            (4.5, false, 1.5),
+        ] {
             let mut against = Against::default();
             against.between(figure, [2.0, 4.0]);
-            assert_eq!((against.reasons.is_empty(), against.severity), (good, severity));
+            assert_eq!(
+                (against.reasons.is_empty(), against.severity),
+                (good, severity)
+            );
         }
         let mut against = Against::default();
         against.at_most(Reason::Missing, 3.0, 4.0);
@@ -92,7 +106,10 @@ mod tests {
         against.at_most(Reason::Excess, 0.0, 0.0);
         assert_eq!(against.severity, 0.75);
         against.at_most(Reason::Excess, 1.0, 0.0);
-        assert_eq!((against.reasons.to_string().as_str(), against.severity), ("excess", f64::INFINITY));
+        assert_eq!(
+            (against.reasons.to_string().as_str(), against.severity),
+            ("excess", f64::INFINITY)
+        );
     }
 
     #[test]
@@ -112,7 +129,9 @@ mod tests {
 
     #[test]
     fn every_further_limit_is_asked() {
-        let (region, runs) = bitmap(&["########", "#..##..#", "########"]).to_region().unwrap();
+        let (region, runs) = bitmap(&["########", "#..##..#", "########"])
+            .to_region()
+            .unwrap();
         let mut limits = Limits {
             missing_px: 0.0,
             excess_px: 0.0,

@@ -62,8 +62,20 @@ mod tests {
             };
             list.offer(cost, place);
         }
-        let kept: Vec<_> = list.as_slice().iter().map(|(cost, place)| (*cost, place.x)).collect();
+        let kept: Vec<_> = list
+            .as_slice()
+            .iter()
+            .map(|(cost, place)| (*cost, place.x))
+            .collect();
         assert_eq!(kept, [(1.0, 4.0), (2.0, 1.0), (2.0, 3.0)]);
-        assert_eq!((list.first(2).len(), list.after(2).len(), list.first(9).len(), list.after(9).len()), (2, 1, 3, 0));
+        assert_eq!(
+            (
+                list.first(2).len(),
+                list.after(2).len(),
+                list.first(9).len(),
+                list.after(9).len()
+            ),
+            (2, 1, 3, 0)
+        );
     }
 }

@@ -24,7 +24,8 @@ impl Silhouette {
     pub fn from_mask(mask: &Bitmap, mm_per_px: f64) -> Result<Self, ShapeError> {
         let (width_px, height_px) = (mask.width_px(), mask.height_px());
         let mut share = vec![0; width_px * height_px];
-        mask.pixels().for_each(|(x, y)| share[y * width_px + x] = 255);
+        mask.pixels()
+            .for_each(|(x, y)| share[y * width_px + x] = 255);
         let whole = Self {
             width_px,
             height_px,
@@ -38,7 +39,11 @@ impl Silhouette {
     /// the rest is too large.
     pub fn trimmed(&self) -> Result<Self, ShapeError> {
         let used = |of: fn(usize, usize) -> usize| {
-            let covered = self.share.iter().enumerate().filter(|&(_, &value)| value > 0);
+            let covered = self
+                .share
+                .iter()
+                .enumerate()
+                .filter(|&(_, &value)| value > 0);
             let mut ends = (usize::MAX, 0);
             for at in covered.map(|(i, _)| of(i, self.width_px)) {
                 ends = (ends.0.min(at), ends.1.max(at + 1));
@@ -86,8 +91,12 @@ impl Silhouette {
     pub fn share_at(&self, x: f64, y: f64) -> f64 {
         let (left, top) = (x.floor(), y.floor());
         let at = |dx: i32, dy: i32| {
-            let (x, y) = ((left as i32).saturating_add(dx), (top as i32).saturating_add(dy));
-            let inside = x >= 0 && y >= 0 && (x as usize) < self.width_px && (y as usize) < self.height_px;
+            let (x, y) = (
+                (left as i32).saturating_add(dx),
+                (top as i32).saturating_add(dy),
+            );
+            let inside =
+                x >= 0 && y >= 0 && (x as usize) < self.width_px && (y as usize) < self.height_px;
             if inside {
                 f64::from(self.share[y as usize * self.width_px + x as usize])
             } else {
@@ -159,10 +168,15 @@ impl Silhouette {
 
     /// Columns and rows of the upright box around the majority, in mm.
     pub fn extent_mm(&self) -> (f64, f64) {
-        self.majority().to_region().map_or((0.0, 0.0), |(region, _)| {
-            let side = |low: u32, high: u32| f64::from(high - low) * self.mm_per_px;
-            (side(region.x_min, region.x_max), side(region.y_min, region.y_max))
-        })
+        self.majority()
+            .to_region()
+            .map_or((0.0, 0.0), |(region, _)| {
+                let side = |low: u32, high: u32| f64::from(high - low) * self.mm_per_px;
+                (
+                    side(region.x_min, region.x_max),
+                    side(region.y_min, region.y_max),
+                )
+            })
     }
 }
 
@@ -208,13 +222,22 @@ mod tests {
         assert_eq!(taught.resampled(0.25).unwrap(), taught);
         for mm_per_px in [0.1, 0.17, 0.3, 0.5, 1.0] {
             let other = taught.resampled(mm_per_px).unwrap();
-            assert!((other.area_mm2() / taught.area_mm2() - 1.0).abs() < 0.03, "{mm_per_px}");
+            assert!(
+                (other.area_mm2() / taught.area_mm2() - 1.0).abs() < 0.03,
+                "{mm_per_px}"
+            );
             // The disc's outermost columns are few pixels high and may be lost between others.
             let change = other.extent_mm().0 - taught.extent_mm().0;
-            assert!(change.abs() <= 2.0 * mm_per_px + 1.0, "{change} at {mm_per_px}");
+            assert!(
+                change.abs() <= 2.0 * mm_per_px + 1.0,
+                "{change} at {mm_per_px}"
+            );
         }
         assert!(matches!(taught.resampled(100.0), Err(ShapeError::Empty)));
-        assert!(matches!(taught.resampled(0.001), Err(ShapeError::TooLarge { .. })));
+        assert!(matches!(
+            taught.resampled(0.001),
+            Err(ShapeError::TooLarge { .. })
+        ));
     }
 
     #[test]

@@ -40,14 +40,23 @@ fn goes(code: u8, second: bool) -> bool {
     let count = |of: &dyn Fn(u32) -> bool| (1..=4).filter(|&i| of(i)).count();
     let pieces = count(&|i| !x(2 * i - 1) && (x(2 * i) || x(2 * i + 1)));
     let pairs = count(&|i| x(2 * i - 1) || x(2 * i)).min(count(&|i| x(2 * i) || x(2 * i + 1)));
-    let side = if second { (x(6) || x(7) || !x(4)) && x(5) } else { (x(2) || x(3) || !x(8)) && x(1) };
+    let side = if second {
+        (x(6) || x(7) || !x(4)) && x(5)
+    } else {
+        (x(2) || x(3) || !x(8)) && x(1)
+    };
     pieces == 1 && (2..=3).contains(&pairs) && !side
 }
 
 impl Skeleton {
     pub(super) fn reserve(&mut self, width_px: usize, height_px: usize) {
         let pixels = (width_px + 2) * (height_px + 2);
-        self.pixels.reserve(pixels.saturating_sub(self.pixels.len()));
+        self.pixels
+            .reserve(pixels.saturating_sub(self.pixels.len()));
+        // The border of a part is a few times as long as its box is high.
+        for list in [&mut self.border, &mut self.gone] {
+            list.reserve((8 * (width_px + height_px)).saturating_sub(list.len()));
+        }
     }
 
     /// How many branches of the skeleton of `set` are longer than `above_px`.
@@ -67,17 +76,25 @@ impl Skeleton {
         long
     }
 
+    /// The skeleton of `set` as a set.
+    pub(super) fn of(&mut self, set: &Bitmap) -> Bitmap {
+        self.thin(set);
+        let mut skeleton = Bitmap::new(set.width_px(), set.height_px());
+        for (at, _) in self
+            .pixels
+            .iter()
+            .enumerate()
+            .filter(|&(_, &pixel)| pixel != 0)
+        {
+            skeleton.insert(at % self.stride - 1, at / self.stride - 1);
+        }
+        skeleton
+    }
+
     /// Thins `set`; what is left are the pixels that are not 0.
     fn thin(&mut self, set: &Bitmap) {
         self.fill(set);
-        loop {
-            let before = self.border.len();
-            let gone = self.half_round(0) + self.half_round(1);
-            if gone == 0 {
-                debug_assert_eq!(before, self.border.len());
-                break;
-            }
-        }
+        while self.half_round(0) + self.half_round(1) > 0 {}
         self.pixels.iter_mut().for_each(|pixel| *pixel &= FIGURE);
     }
 
@@ -132,7 +149,9 @@ impl Skeleton {
     }
 
     fn neighbours(&self, at: usize) -> impl Iterator<Item = usize> {
-        around(at, self.stride).into_iter().filter(|&at| self.pixels[at] != 0)
+        around(at, self.stride)
+            .into_iter()
+            .filter(|&at| self.pixels[at] != 0)
     }
 
     /// Where the way from an end leads, and how long it is.
@@ -140,9 +159,15 @@ impl Skeleton {
         let (mut last, mut here, mut length) = (start, start, 0.0);
         // No path is longer than there are pixels.
         for _ in 0..self.pixels.len() {
-            let Some(next) = self.only_way(last, here) else { break };
+            let Some(next) = self.only_way(last, here) else {
+                break;
+            };
             let beside = next.abs_diff(here) == 1 || next.abs_diff(here) == self.stride;
-            length += if beside { 1.0 } else { std::f64::consts::SQRT_2 };
+            length += if beside {
+                1.0
+            } else {
+                std::f64::consts::SQRT_2
+            };
             (last, here) = (here, next);
         }
         (here, length)
@@ -178,18 +203,6 @@ fn around(at: usize, stride: usize) -> [usize; 8] {
         at + stride,
         at + stride + 1,
     ]
-}
-
-impl Skeleton {
-    /// The skeleton of `set` as a set.
-    pub(super) fn of(&mut self, set: &Bitmap) -> Bitmap {
-        self.thin(set);
-        let mut skeleton = Bitmap::new(set.width_px(), set.height_px());
-        for (at, _) in self.pixels.iter().enumerate().filter(|&(_, &pixel)| pixel != 0) {
-            skeleton.insert(at % self.stride - 1, at / self.stride - 1);
-        }
-        skeleton
-    }
 }
 
 #[cfg(test)]
@@ -252,7 +265,16 @@ mod tests {
                 let old = set.clone();
                 for (x, y) in old.pixels() {
                     let (u, v) = (x as i32, y as i32);
-                    let steps = [(1, 0), (1, -1), (0, -1), (-1, -1), (-1, 0), (-1, 1), (0, 1), (1, 1)];
+                    let steps = [
+                        (1, 0),
+                        (1, -1),
+                        (0, -1),
+                        (-1, -1),
+                        (-1, 0),
+                        (-1, 1),
+                        (0, 1),
+                        (1, 1),
+                    ];
                     let bit = |i: usize| u8::from(old.has(u + steps[i].0, v + steps[i].1)) << i;
                     if goes((0..8).map(bit).sum(), second) {
                         set.remove(x, y);

@@ -92,10 +92,14 @@ impl Taught {
             problem,
         };
         let text = read_text(file)?;
-        let note: Note = toml::from_str(&text).map_err(|error| wrong(error.to_string().trim_end().to_owned()))?;
+        let note: Note = toml::from_str(&text)
+            .map_err(|error| wrong(error.to_string().trim_end().to_owned()))?;
         check_name(&note.name).map_err(wrong)?;
         if !(0.001..=10.0).contains(&note.mm_per_px) {
-            return Err(wrong(format!("mm_per_px is {}; expected 0.001 to 10", note.mm_per_px)));
+            return Err(wrong(format!(
+                "mm_per_px is {}; expected 0.001 to 10",
+                note.mm_per_px
+            )));
         }
         let picture = beside(file, &note.picture).ok_or_else(|| {
             wrong(format!(
@@ -110,7 +114,9 @@ impl Taught {
             mm_per_px: note.mm_per_px,
             share: gray.values,
         };
-        let silhouette = silhouette.trimmed().map_err(|error| wrong(error.to_string()))?;
+        let silhouette = silhouette
+            .trimmed()
+            .map_err(|error| wrong(error.to_string()))?;
         check_figures(&silhouette, &note.figures).map_err(wrong)?;
         Ok(Self {
             name: note.name,
@@ -130,7 +136,8 @@ impl Taught {
         check_name(&self.name).map_err(wrong)?;
         let picture = file.with_extension("png");
         let plain = picture.file_name().and_then(|name| name.to_str());
-        let Some(picture_name) = plain.filter(|_| file.extension().is_some_and(|e| e == "toml")) else {
+        let Some(picture_name) = plain.filter(|_| file.extension().is_some_and(|e| e == "toml"))
+        else {
             return Err(wrong("expected the name of a .toml file".to_owned()));
         };
         let silhouette = self.silhouette.trimmed()?;
@@ -143,7 +150,9 @@ impl Taught {
             figures: Figures::of(&silhouette),
         };
         let text = toml::to_string(&note).map_err(|error| wrong(error.to_string()))?;
-        let text = format!("# A taught shape. The picture holds the share of good parts that cover each pixel.\n{text}");
+        let text = format!(
+            "# A taught shape. The picture holds the share of good parts that cover each pixel.\n{text}"
+        );
         let png = encode(&silhouette).map_err(ShapeError::file(&picture))?;
         let new_picture = write_new(&picture, &png)?;
         let new_note = write_new(file, text.as_bytes())?;
@@ -155,7 +164,9 @@ impl Taught {
 fn check_name(name: &str) -> Result<(), String> {
     let length = name.chars().count();
     if !(1..=40).contains(&length) || name.chars().any(char::is_control) {
-        return Err(format!("name is {name:?}; expected 1 to 40 characters on one line"));
+        return Err(format!(
+            "name is {name:?}; expected 1 to 40 characters on one line"
+        ));
     }
     Ok(())
 }
@@ -169,8 +180,8 @@ fn check_figures(silhouette: &Silhouette, figures: &Figures) -> Result<(), Strin
         ("area_mm2", figures.area_mm2, silhouette.area_mm2()),
     ];
     for (key, stored, derived) in pairs {
-        // Written so that NaN fails.
-        if !((stored - derived).abs() <= 0.01 * derived) {
+        let near = (stored - derived).abs() <= 0.01 * derived;
+        if !near {
             return Err(format!(
                 "figures.{key} is {stored}, but the picture gives {derived:.4}: teach the shape again, or put back the \
                  picture and mm_per_px that belong to it"
@@ -184,8 +195,12 @@ fn check_figures(silhouette: &Silhouette, figures: &Figures) -> Result<(), Strin
 fn beside(file: &Path, name: &str) -> Option<PathBuf> {
     let path = Path::new(name);
     let mut components = path.components();
-    let plain = matches!((components.next(), components.next()), (Some(Component::Normal(_)), None));
-    let plain = plain && !name.contains(['/', '\\', '\0']) && path.extension().is_some_and(|e| e == "png");
+    let plain = matches!(
+        (components.next(), components.next()),
+        (Some(Component::Normal(_)), None)
+    );
+    let plain =
+        plain && !name.contains(['/', '\\', '\0']) && path.extension().is_some_and(|e| e == "png");
     plain.then(|| file.with_file_name(name))
 }
 
@@ -193,7 +208,8 @@ fn read_text(path: &Path) -> Result<String, ShapeError> {
     let mut text = String::new();
     let file = File::open(path).map_err(ShapeError::file(path))?;
     let mut some = file.take(LONGEST_NOTE + 1);
-    some.read_to_string(&mut text).map_err(ShapeError::file(path))?;
+    some.read_to_string(&mut text)
+        .map_err(ShapeError::file(path))?;
     if text.len() as u64 > LONGEST_NOTE {
         return Err(ShapeError::Note {
             path: path.to_owned(),
@@ -244,7 +260,9 @@ pub fn read_gray(path: &Path, max_side_px: u32) -> Result<GrayPicture, ShapeErro
         return Err(wrong(format!("pixels of kind {kind:?}")));
     }
     let mut values = vec![0; width as usize * height as usize];
-    decoder.read_image(&mut values).map_err(|error| wrong(error.to_string()))?;
+    decoder
+        .read_image(&mut values)
+        .map_err(|error| wrong(error.to_string()))?;
     Ok(GrayPicture {
         width_px: width as usize,
         height_px: height as usize,
@@ -285,7 +303,10 @@ mod tests {
     fn gasket() -> Taught {
         Taught {
             name: "gasket".to_owned(),
-            silhouette: silhouette(&Outline::gasket(40.0), 0.25).0.trimmed().unwrap(),
+            silhouette: silhouette(&Outline::gasket(40.0), 0.25)
+                .0
+                .trimmed()
+                .unwrap(),
             parts: 12,
             notes: "two \"kinds\" of rubber\nsecond line".to_owned(),
         }
@@ -303,11 +324,17 @@ mod tests {
         gasket().write(&file).unwrap();
         gasket().write(&file).unwrap();
         assert_eq!(Taught::read(&file).unwrap(), gasket());
-        let mut names: Vec<_> = fs::read_dir(folder.path()).unwrap().map(|e| e.unwrap().file_name()).collect();
+        let mut names: Vec<_> = fs::read_dir(folder.path())
+            .unwrap()
+            .map(|e| e.unwrap().file_name())
+            .collect();
         names.sort();
         assert_eq!(names, ["gasket.png", "gasket.toml"]);
         let figures = Figures::of(&gasket().silhouette);
-        assert_eq!((figures.turns, figures.mirror, figures.bores_mm2.len()), (1, false, 1));
+        assert_eq!(
+            (figures.turns, figures.mirror, figures.bores_mm2.len()),
+            (1, false, 1)
+        );
         let bore = std::f64::consts::PI * (0.55_f64 * 40.0 * 0.25).powi(2);
         assert!((figures.bores_mm2[0] / bore - 1.0).abs() < 0.02);
     }
@@ -329,13 +356,41 @@ mod tests {
             ("mm_per_px = 0.25", "mm_per_px = 0.5", "figures.width_mm is"),
             ("mm_per_px = 0.25", "mm_per_px = \"x\"", "expected f64"),
             ("parts = 12", "parts = -1", "expected u32"),
-            ("parts = 12", "parts = 12\ncolour = 1", "unknown field `colour`"),
-            ("name = \"gasket\"", "name = \"\"", "expected 1 to 40 characters"),
-            ("\"gasket.png\"", "\"../gasket.png\"", "expected the plain name"),
-            ("\"gasket.png\"", "\"/etc/gasket.png\"", "expected the plain name"),
-            ("\"gasket.png\"", "\"a/gasket.png\"", "expected the plain name"),
-            ("\"gasket.png\"", "'..\\gasket.png'", "expected the plain name"),
-            ("\"gasket.png\"", "\"gasket.toml\"", "expected the plain name"),
+            (
+                "parts = 12",
+                "parts = 12\ncolour = 1",
+                "unknown field `colour`",
+            ),
+            (
+                "name = \"gasket\"",
+                "name = \"\"",
+                "expected 1 to 40 characters",
+            ),
+            (
+                "\"gasket.png\"",
+                "\"../gasket.png\"",
+                "expected the plain name",
+            ),
+            (
+                "\"gasket.png\"",
+                "\"/etc/gasket.png\"",
+                "expected the plain name",
+            ),
+            (
+                "\"gasket.png\"",
+                "\"a/gasket.png\"",
+                "expected the plain name",
+            ),
+            (
+                "\"gasket.png\"",
+                "'..\\gasket.png'",
+                "expected the plain name",
+            ),
+            (
+                "\"gasket.png\"",
+                "\"gasket.toml\"",
+                "expected the plain name",
+            ),
             ("\"gasket.png\"", "\"other.png\"", "other.png: "),
         ];
         for (from, to, expected) in cases {
@@ -356,7 +411,9 @@ mod tests {
     fn bad_pictures_are_refused_with_the_reason() {
         let png = |bytes: &[u8], width, height, kind| {
             let mut png = Vec::new();
-            PngEncoder::new(&mut png).write_image(bytes, width, height, kind).unwrap();
+            PngEncoder::new(&mut png)
+                .write_image(bytes, width, height, kind)
+                .unwrap();
             png
         };
         let good = encode(&gasket().silhouette).unwrap();
@@ -365,13 +422,31 @@ mod tests {
         huge[16..24].copy_from_slice(&[0, 1, 0, 0, 0, 1, 0, 0]);
         let cases = [
             (b"no picture".to_vec(), "expected an 8-bit gray PNG"),
-            (good[..good.len() / 2].to_vec(), "expected an 8-bit gray PNG"),
+            (
+                good[..good.len() / 2].to_vec(),
+                "expected an 8-bit gray PNG",
+            ),
             (huge, "expected an 8-bit gray PNG"),
-            (png(&[0; 12], 2, 2, ExtendedColorType::Rgb8), "pixels of kind Rgb8"),
-            (png(&[0; 8], 2, 2, ExtendedColorType::L16), "pixels of kind L16"),
-            (png(&[0; 4], 2, 2, ExtendedColorType::L8), "no pixel that most parts cover"),
-            (png(&[255; 4], 2, 2, ExtendedColorType::L8), "figures.width_mm is"),
-            (png(&vec![0; 5000], 5000, 1, ExtendedColorType::L8), "expected an 8-bit gray PNG"),
+            (
+                png(&[0; 12], 2, 2, ExtendedColorType::Rgb8),
+                "pixels of kind Rgb8",
+            ),
+            (
+                png(&[0; 8], 2, 2, ExtendedColorType::L16),
+                "pixels of kind L16",
+            ),
+            (
+                png(&[0; 4], 2, 2, ExtendedColorType::L8),
+                "no pixel that most parts cover",
+            ),
+            (
+                png(&[255; 4], 2, 2, ExtendedColorType::L8),
+                "figures.width_mm is",
+            ),
+            (
+                png(&vec![0; 5000], 5000, 1, ExtendedColorType::L8),
+                "expected an 8-bit gray PNG",
+            ),
         ];
         for (bytes, expected) in cases {
             let message = with_picture(&bytes);
@@ -383,8 +458,14 @@ mod tests {
     fn nothing_is_left_where_nothing_could_be_written() {
         let (folder, _) = folder();
         let missing = folder.path().join("nowhere").join("gasket.toml");
-        assert!(matches!(gasket().write(&missing), Err(ShapeError::File { .. })));
-        assert!(matches!(gasket().write(&folder.path().join("gasket")), Err(ShapeError::Note { .. })));
+        assert!(matches!(
+            gasket().write(&missing),
+            Err(ShapeError::File { .. })
+        ));
+        assert!(matches!(
+            gasket().write(&folder.path().join("gasket")),
+            Err(ShapeError::Note { .. })
+        ));
         assert_eq!(fs::read_dir(folder.path()).unwrap().count(), 0);
     }
 }

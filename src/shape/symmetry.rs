@@ -26,7 +26,11 @@ impl Symmetry {
 
     /// Angles are told apart from 0 up to this.
     pub fn span_deg(self) -> f64 {
-        if self.turns == 0 { 0.0 } else { 360.0 / f64::from(self.turns) }
+        if self.turns == 0 {
+            0.0
+        } else {
+            360.0 / f64::from(self.turns)
+        }
     }
 
     /// The smallest of the angles that look the same as this one.
@@ -51,11 +55,15 @@ impl Symmetry {
             ..model.identity()
         };
         // Turns that have nothing to do with one another or with the angles of corners.
-        let round = [17.3, 47.9, 77.7, 101.3, 137.5].iter().all(|&angle| same.at(turned(angle)));
+        let round = [17.3, 47.9, 77.7, 101.3, 137.5]
+            .iter()
+            .all(|&angle| same.at(turned(angle)));
         let turns = if round {
             0
         } else {
-            let found = (2..=MOST_TURNS).rev().find(|&n| same.at(turned(360.0 / f64::from(n))));
+            let found = (2..=MOST_TURNS)
+                .rev()
+                .find(|&n| same.at(turned(360.0 / f64::from(n))));
             found.unwrap_or(1)
         };
         let mirror = round || same.anywhere_mirrored(turns);
@@ -87,7 +95,8 @@ impl<'a> Same<'a> {
     }
 
     fn fit(&mut self, pose: Pose) -> f64 {
-        self.overlay.place(&self.region, &self.runs, self.model, pose);
+        self.overlay
+            .place(&self.region, &self.runs, self.model, pose);
         self.overlay.fit()
     }
 
@@ -101,7 +110,9 @@ impl<'a> Same<'a> {
     fn anywhere_mirrored(&mut self, turns: u32) -> bool {
         let span = 360.0 / f64::from(turns);
         // Two pixels at the rim, then half a pixel.
-        let coarse = (2.0 / self.model.radius_px.max(1.0)).to_degrees().clamp(0.2, 9.0);
+        let coarse = (2.0 / self.model.radius_px.max(1.0))
+            .to_degrees()
+            .clamp(0.2, 9.0);
         let best = self.best_mirrored(0.0, coarse, (span / coarse).ceil() as u32);
         let best = self.best_mirrored(best - coarse, coarse / 4.0, 9);
         self.at(self.mirrored(best))

@@ -91,7 +91,11 @@ impl Teacher {
         let flipped = class.seats.iter().filter(|seat| seat.pose.flipped).count();
         if 2 * flipped > self.parts.len() {
             // The part that was begun with lies face down: begin with one of the others.
-            let other = class.seats.iter().position(|seat| seat.pose.flipped).unwrap_or(first);
+            let other = class
+                .seats
+                .iter()
+                .position(|seat| seat.pose.flipped)
+                .unwrap_or(first);
             class = self.attend(self.alone(other)?)?;
         }
         Ok(class.lesson(self.mm_per_px))
@@ -122,12 +126,22 @@ impl Teacher {
 /// The region as a set with an empty border, and the picture's pixel that is its (0, 0).
 fn mask(region: &Region, runs: &[Run]) -> (Bitmap, (f64, f64)) {
     let side = |low: u32, high: u32| (high - low) as usize + 2;
-    let mut mask = Bitmap::new(side(region.x_min, region.x_max), side(region.y_min, region.y_max));
+    let mut mask = Bitmap::new(
+        side(region.x_min, region.x_max),
+        side(region.y_min, region.y_max),
+    );
     for run in runs {
         let column = |x: u32| (x - region.x_min) as usize + 1;
-        mask.insert_run((run.y - region.y_min) as usize + 1, column(run.x0), column(run.x1));
+        mask.insert_run(
+            (run.y - region.y_min) as usize + 1,
+            column(run.x0),
+            column(run.x1),
+        );
     }
-    (mask, (f64::from(region.x_min) - 1.0, f64::from(region.y_min) - 1.0))
+    (
+        mask,
+        (f64::from(region.x_min) - 1.0, f64::from(region.y_min) - 1.0),
+    )
 }
 
 /// All parts aligned to one silhouette.
@@ -147,7 +161,8 @@ struct Seat {
 impl Class {
     fn seat(silhouette: Silhouette, parts: &[(Region, Vec<Run>)]) -> Self {
         let model = Model::new(silhouette);
-        let (mut finder, mut overlay, mut gauge) = (Finder::default(), Overlay::default(), Gauge::default());
+        let (mut finder, mut overlay, mut gauge) =
+            (Finder::default(), Overlay::default(), Gauge::default());
         let mut seat = |(region, runs): &(Region, Vec<Run>)| {
             let found = finder.find(region, runs, &model, &mut overlay);
             let (missing, excess) = overlay.gauge(&mut gauge, 0.0);
@@ -257,7 +272,10 @@ fn leave_out(seats: &mut [Seat]) {
 /// The lower of the two middle ones of an even number; 0 of none.
 fn median(mut values: Vec<f64>) -> f64 {
     values.sort_by(f64::total_cmp);
-    values.get(values.len().saturating_sub(1) / 2).copied().unwrap_or(0.0)
+    values
+        .get(values.len().saturating_sub(1) / 2)
+        .copied()
+        .unwrap_or(0.0)
 }
 
 #[cfg(test)]
@@ -301,8 +319,15 @@ mod tests {
     fn good_parts_give_the_drawn_shape() {
         for outline in [Outline::star(76.0), Outline::gasket(60.0)] {
             let lesson = lesson(&outline, &vec![(false, Vec::new()); 12]);
-            assert!(lesson.parts.iter().all(|part| part.left_out.is_none()), "{lesson:?}");
-            assert!(lesson.missing_mm.worst <= 0.5 && lesson.excess_mm.worst <= 0.5, "{:?}", lesson.parts);
+            assert!(
+                lesson.parts.iter().all(|part| part.left_out.is_none()),
+                "{lesson:?}"
+            );
+            assert!(
+                lesson.missing_mm.worst <= 0.5 && lesson.excess_mm.worst <= 0.5,
+                "{:?}",
+                lesson.parts
+            );
             assert!(lesson.missing_mm.median <= lesson.missing_mm.worst);
             assert!(differ_px(&lesson.silhouette, &outline) <= 1.5);
         }
