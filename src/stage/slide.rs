@@ -6,8 +6,12 @@ use super::buffer::Aligned;
 use super::element::Span;
 use super::kernels::{Extremum, Job, Level, Rows, RowsMut, suffix_stride};
 
-/// Bands have about this many rows, so that what one step writes is still in the cache for the next.
+/// A step takes about this many rows, so that what it writes is still in the cache for the next.
 const BAND_ROWS: usize = 64;
+
+/// Windows up to this length are taken block by block, so that a block is still in the nearest cache when it is read
+/// backwards. The blocks of longer windows do not fit there; then it is better to have fewer rows under way.
+const WHOLE_BLOCKS: usize = 128;
 
 /// The extremum over a vertical window around every pixel; what lies outside the picture is ignored.
 pub(crate) struct Slide {
@@ -15,12 +19,10 @@ pub(crate) struct Slide {
     span: Span,
     width_px: usize,
     height_px: usize,
-    /// The suffix extrema of the last block, and one row of the kernel's.
+    /// The kernel's memory of the last block.
     suffix: Aligned,
-    /// The next block.
+    /// The next row that goes in.
     next: usize,
-    /// How many blocks a picture has.
-    blocks: usize,
 }
 
 impl Slide {
@@ -39,20 +41,20 @@ impl Slide {
             height_px,
             suffix: Aligned::new(0, (span.size() + 1) * suffix_stride(width_px)),
             next: 0,
-            blocks: match height_px {
-                0 => 0,
-                _ => (height_px + span.after).div_ceil(span.size()),
-            },
+        }
+    }
+
+    /// Steps begin and end with a multiple of this many rows, but for the last.
+    fn grain(&self) -> usize {
+        match self.span.size() {
+            size @ ..=WHOLE_BLOCKS => size,
+            _ => 1,
         }
     }
 
     /// The most rows that one step yields.
     pub fn most_rows(&self) -> usize {
-        self.blocks_per_step() * self.span.size()
-    }
-
-    fn blocks_per_step(&self) -> usize {
-        BAND_ROWS.div_ceil(self.span.size())
+        BAND_ROWS.next_multiple_of(self.grain())
     }
 
     /// Begins a new picture.
@@ -60,38 +62,39 @@ impl Slide {
         self.next = 0;
     }
 
-    /// The next step, if the `ready` first rows of the picture are enough for it.
+    /// The next step of at most `most` rows, if the `ready` first rows of the picture are enough for it.
     fn job(&self, ready: usize, most: usize) -> Option<Job> {
-        let possible = match ready == self.height_px {
-            true => self.blocks,
-            false => ready / self.span.size(),
-        };
-        let count = possible.saturating_sub(self.next).min(most);
-        (count > 0).then_some(Job {
+        let rows = Job::rows(self.height_px, self.span);
+        let possible = if ready == self.height_px { rows } else { ready };
+        let mut to = possible.min(self.next.saturating_add(most));
+        if to < rows {
+            to -= to % self.grain();
+        }
+        (to > self.next).then_some(Job {
             width_px: self.width_px,
             height_px: self.height_px,
             span: self.span,
             src_top: 0,
-            first: self.next,
-            count,
+            from: self.next,
+            to,
         })
     }
 
     /// The rows that the next step will yield; `None` if it needs more than `ready` rows, or if there is none.
     pub fn upcoming(&self, ready: usize) -> Option<Range<usize>> {
-        let job = self.job(ready, self.blocks_per_step())?;
+        let job = self.job(ready, self.most_rows())?;
         Some(job.rows_out())
     }
 
     /// The first row that steps to come will read.
     pub fn needed(&self) -> usize {
-        self.next * self.span.size()
+        self.next - self.next % self.span.size()
     }
 
     /// Yields the [`Self::upcoming`] rows into `dst`, which begins with the first of them; `src` begins with row `src_top`,
     /// which must not come after [`Self::needed`].
     pub fn step(&mut self, level: Level, ready: usize, src_top: usize, src: Rows, dst: RowsMut) {
-        if let Some(mut job) = self.job(ready, self.blocks_per_step()) {
+        if let Some(mut job) = self.job(ready, self.most_rows()) {
             job.src_top = src_top;
             self.run(level, job, src, dst);
         }
@@ -111,6 +114,6 @@ impl Slide {
             stride_px: suffix_stride(self.width_px),
         };
         level.slide(self.op, job, src, dst, suffix);
-        self.next += job.count;
+        self.next = job.to;
     }
 }

@@ -313,6 +313,22 @@ mod tests {
         }
     }
 
+    /// Taller than the reel, with windows that are taken block by block and others that are not.
+    #[test]
+    fn a_picture_of_many_bands() {
+        for height_px in [2, 40, 128, 129, 250] {
+            let picture = noise(33, 1_500, height_px);
+            let width_px = 2;
+            check(
+                &picture,
+                Element::Rectangle {
+                    width_px,
+                    height_px,
+                },
+            );
+        }
+    }
+
     fn pairs(
         a: std::ops::RangeInclusive<usize>,
         b: std::ops::RangeInclusive<usize>,

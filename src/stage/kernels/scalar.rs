@@ -7,23 +7,26 @@ pub(super) fn slide(op: Extremum, job: Job, src: Rows, mut dst: RowsMut, mut suf
     for block in job.blocks() {
         let src = src.from(block.src);
         yield_rows(op, block, src, dst.from(block.out), &mut suffix);
-        extend_suffix(op, block, src, &mut suffix);
+        if block.wants_suffix {
+            make_suffix(op, block, src, &mut suffix);
+        }
     }
 }
 
 /// The forward half of a block: the running prefix, joined with the previous block's suffix.
 fn yield_rows(op: Extremum, block: Block, src: Rows, mut dst: RowsMut, suffix: &mut RowsMut) {
-    let width = block.width_px;
-    let stride = suffix.stride_px;
+    let (width, stride) = (block.width_px, suffix.stride_px);
     let (suffix, prefix) = suffix.pixels.split_at_mut(block.size * stride);
     let prefix = &mut prefix[..width];
-    prefix.fill(op.neutral());
-    for o in 0..block.end {
+    if block.from == 0 {
+        prefix.fill(op.neutral());
+    }
+    for o in block.from..block.to {
         if o < block.rows_in {
             join(op, prefix, src.row(o, width));
         }
-        if o >= block.skip {
-            let out = dst.row(o - block.skip, width);
+        if o >= block.first_out {
+            let out = dst.row(o - block.first_out, width);
             out.copy_from_slice(prefix);
             if o + 1 < block.size && !block.is_first {
                 join(op, out, &suffix[(o + 1) * stride..][..width]);
@@ -33,7 +36,7 @@ fn yield_rows(op: Extremum, block: Block, src: Rows, mut dst: RowsMut, suffix: &
 }
 
 /// The backward half: the suffix that the next block needs.
-fn extend_suffix(op: Extremum, block: Block, src: Rows, suffix: &mut RowsMut) {
+fn make_suffix(op: Extremum, block: Block, src: Rows, suffix: &mut RowsMut) {
     let (width, stride) = (block.width_px, suffix.stride_px);
     for o in (0..block.size).rev() {
         let (this, below) = suffix.pixels[o * stride..].split_at_mut(stride);

@@ -111,6 +111,17 @@ impl Source {
         }
     }
 
+    /// Rows `top..end`, and nothing behind them.
+    fn rows_between(&self, top: usize, end: usize, width: usize) -> Rows<'_> {
+        let last = self.start + end.saturating_sub(1) * self.stride + width;
+        Rows {
+            pixels: self.bytes[..last]
+                .get(self.start + top * self.stride..)
+                .unwrap_or(&[]),
+            stride_px: self.stride,
+        }
+    }
+
     fn at(&self, x: usize, y: usize) -> u8 {
         self.bytes[self.start + y * self.stride + x]
     }
@@ -169,8 +180,8 @@ fn whole(width_px: usize, height_px: usize, span: Span) -> Job {
         height_px,
         span,
         src_top: 0,
-        first: 0,
-        count: (height_px + span.after).div_ceil(span.size()),
+        from: 0,
+        to: Job::rows(height_px, span),
     }
 }
 
@@ -243,30 +254,44 @@ pub(super) fn slide_in_steps(level: Level) {
         ] {
             let source = Source::new(width, height, width);
             let mut target = Target::new(width, height, width);
-            let mut suffix = suffix(width, span);
             let all = whole(width, height, span);
-            for first in (0..all.count).step_by(2) {
-                let job = Job {
-                    first,
-                    count: 2.min(all.count - first),
-                    src_top: (first * span.size()).min(height),
-                    ..all
-                };
-                let mut dst = target.rows();
-                let suffix = RowsMut {
-                    pixels: &mut suffix,
-                    stride_px: suffix_stride(width),
-                };
-                level.slide(
-                    op,
-                    job,
-                    source.rows().from(job.src_top),
-                    dst.from(job.rows_out().start),
-                    suffix,
-                );
+            for step in [1, 2, 5, 6, 7, 13, 22] {
+                slide_by(level, op, step, all, &source, &mut target);
+                target.check("in steps", |x, y| extremum(op, &source, height, span, x, y));
             }
-            target.check("in steps", |x, y| extremum(op, &source, height, span, x, y));
         }
+    }
+}
+
+/// Slides `step` rows at a time; the source begins as late as it may.
+fn slide_by(
+    level: Level,
+    op: Extremum,
+    step: usize,
+    all: Job,
+    source: &Source,
+    target: &mut Target,
+) {
+    let mut suffix = suffix(all.width_px, all.span);
+    for from in (0..all.to).step_by(step) {
+        let job = Job {
+            from,
+            to: all.to.min(from + step),
+            src_top: (from - from % all.span.size()).min(all.height_px),
+            ..all
+        };
+        let mut dst = target.rows();
+        let suffix = RowsMut {
+            pixels: &mut suffix,
+            stride_px: suffix_stride(all.width_px),
+        };
+        level.slide(
+            op,
+            job,
+            source.rows_between(job.src_top, job.to.min(all.height_px), all.width_px),
+            dst.from(job.rows_out().start),
+            suffix,
+        );
     }
 }
 
@@ -339,9 +364,13 @@ fn blocks_yield_every_row_once() {
                 after: after.min(height - 1),
             };
             let job = whole(1, height, span);
-            let rows: usize = job.blocks().map(|Block { skip, end, .. }| end - skip).sum();
+            let rows: usize = job
+                .blocks()
+                .map(|Block { first_out, to, .. }| to - first_out)
+                .sum();
             assert_eq!((rows, job.rows_out()), (height, 0..height));
-            assert_eq!(job.blocks().filter(|block| block.is_last).count(), 1);
+            let suffixes = job.blocks().filter(|block| block.wants_suffix).count();
+            assert_eq!(suffixes, job.blocks().count() - 1);
         }
     }
 }

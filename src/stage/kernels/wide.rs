@@ -35,7 +35,7 @@ macro_rules! slide {
             let mut x = 0;
             while x < job.width_px {
                 let step = tile_width(size, job.width_px - x);
-                let own = rest.split_off_mut(..step * size);
+                let own = rest.split_off_mut(..step * (size + 1));
                 let own = own.expect("the suffix has room for every tile");
                 let column = x.min(job.width_px - step);
                 if step == 4 * $lane {
@@ -121,11 +121,12 @@ macro_rules! slide {
             suffix: &mut [u8],
         ) {
             let inside = block.rows_in;
-            let suffix = &mut suffix.as_chunks_mut().0[..block.size];
+            let rows = suffix.as_chunks_mut().0;
+            let (suffix, prefix) = rows.split_at_mut(block.size);
             let src = View::new(src, x, inside);
-            let dst = ViewMut::new(dst.from(0), x, block.end - block.skip);
-            yield_rows::<MAX, WIDTH>(block, src, dst, suffix);
-            if block.is_last {
+            let dst = ViewMut::new(dst.from(0), x, block.to - block.first_out);
+            yield_rows::<MAX, WIDTH>(block, src, dst, suffix, &mut prefix[0]);
+            if !block.wants_suffix {
                 return;
             }
             let mut backward = neutral::<MAX>();
@@ -146,33 +147,37 @@ macro_rules! slide {
             src: View<WIDTH>,
             mut dst: ViewMut<WIDTH>,
             suffix: &[[u8; WIDTH]],
+            kept: &mut [u8; WIDTH],
         ) {
-            let Block { skip, end, .. } = *block;
-            let inside = block.rows_in;
+            let (inside, first_out, to) = (block.rows_in, block.first_out, block.to);
             // The last row of a block ends a window that lies in this block alone, as do all in the first block.
             let joined = match block.is_first {
-                true => skip,
-                false => end.min(block.size - 1),
+                true => first_out,
+                false => to.min(block.size - 1).max(first_out),
             };
             let mut prefix = neutral::<MAX>();
-            for o in 0..skip.min(inside) {
+            if block.from > 0 {
+                prefix = join::<MAX, WIDTH>(&prefix, kept);
+            }
+            for o in block.from..first_out.min(inside) {
                 prefix = join::<MAX, WIDTH>(&prefix, src.row(o));
             }
-            for o in skip..joined.min(inside) {
+            for o in first_out..joined.min(inside) {
                 prefix = join::<MAX, WIDTH>(&prefix, src.row(o));
                 let both = join::<MAX, WIDTH>(&prefix, &suffix[o + 1]);
-                put(dst.row(o - skip), &both);
+                put(dst.row(o - first_out), &both);
             }
-            for o in skip.max(inside)..joined {
+            for o in first_out.max(inside)..joined {
                 let both = join::<MAX, WIDTH>(&prefix, &suffix[o + 1]);
-                put(dst.row(o - skip), &both);
+                put(dst.row(o - first_out), &both);
             }
-            for o in joined..end {
+            for o in joined..to {
                 if o < inside {
                     prefix = join::<MAX, WIDTH>(&prefix, src.row(o));
                 }
-                put(dst.row(o - skip), &prefix);
+                put(dst.row(o - first_out), &prefix);
             }
+            put(kept, &prefix);
         }
     };
 }
