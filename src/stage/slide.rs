@@ -6,12 +6,8 @@ use super::buffer::Aligned;
 use super::element::Span;
 use super::kernels::{Extremum, Job, Level, Rows, RowsMut, suffix_stride};
 
-/// A step takes about this many rows, so that what it writes is still in the cache for the next.
-const BAND_ROWS: usize = 64;
-
-/// Windows up to this length are taken block by block, so that a block is still in the nearest cache when it is read
-/// backwards. The blocks of longer windows do not fit there; then it is better to have fewer rows under way.
-const WHOLE_BLOCKS: usize = 128;
+/// A step takes at most this many rows, so that what it writes is still in the cache for the next.
+pub(crate) const BAND_ROWS: usize = 64;
 
 /// The extremum over a vertical window around every pixel; what lies outside the picture is ignored.
 pub(crate) struct Slide {
@@ -44,19 +40,6 @@ impl Slide {
         }
     }
 
-    /// Steps begin and end with a multiple of this many rows, but for the last.
-    fn grain(&self) -> usize {
-        match self.span.size() {
-            size @ ..=WHOLE_BLOCKS => size,
-            _ => 1,
-        }
-    }
-
-    /// The most rows that one step yields.
-    pub fn most_rows(&self) -> usize {
-        BAND_ROWS.next_multiple_of(self.grain())
-    }
-
     /// Begins a new picture.
     pub fn restart(&mut self) {
         self.next = 0;
@@ -66,10 +49,7 @@ impl Slide {
     fn job(&self, ready: usize, most: usize) -> Option<Job> {
         let rows = Job::rows(self.height_px, self.span);
         let possible = if ready == self.height_px { rows } else { ready };
-        let mut to = possible.min(self.next.saturating_add(most));
-        if to < rows {
-            to -= to % self.grain();
-        }
+        let to = possible.min(self.next.saturating_add(most));
         (to > self.next).then_some(Job {
             width_px: self.width_px,
             height_px: self.height_px,
@@ -82,7 +62,7 @@ impl Slide {
 
     /// The rows that the next step will yield; `None` if it needs more than `ready` rows, or if there is none.
     pub fn upcoming(&self, ready: usize) -> Option<Range<usize>> {
-        let job = self.job(ready, self.most_rows())?;
+        let job = self.job(ready, BAND_ROWS)?;
         Some(job.rows_out())
     }
 
@@ -94,7 +74,7 @@ impl Slide {
     /// Yields the [`Self::upcoming`] rows into `dst`, which begins with the first of them; `src` begins with row `src_top`,
     /// which must not come after [`Self::needed`].
     pub fn step(&mut self, level: Level, ready: usize, src_top: usize, src: Rows, dst: RowsMut) {
-        if let Some(mut job) = self.job(ready, self.most_rows()) {
+        if let Some(mut job) = self.job(ready, BAND_ROWS) {
             job.src_top = src_top;
             self.run(level, job, src, dst);
         }

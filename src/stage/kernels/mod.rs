@@ -24,10 +24,6 @@ pub(crate) use job::Job;
 /// The environment variable that forces a level.
 const FORCE: &str = "BELTWRIGHT_KERNELS";
 
-/// Bytes of the nearest data cache that a kernel may count on.
-#[cfg(target_arch = "x86_64")]
-const NEAREST_CACHE: usize = 40 * 1024;
-
 /// Which of two values wins.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub(crate) enum Extremum {

@@ -34,7 +34,11 @@ macro_rules! slide {
             let mut rest = &mut *suffix.pixels;
             let mut x = 0;
             while x < job.width_px {
-                let step = tile_width(size, job.width_px - x);
+                let step = match (job.width_px - x) / $lane {
+                    4.. => 4 * $lane,
+                    2.. => 2 * $lane,
+                    _ => $lane,
+                };
                 let own = rest.split_off_mut(..step * (size + 1));
                 let own = own.expect("the suffix has room for every tile");
                 let column = x.min(job.width_px - step);
@@ -46,17 +50,6 @@ macro_rules! slide {
                     column_of_tiles::<MAX, $lane>(job, column, src, &mut dst, own);
                 }
                 x += step;
-            }
-        }
-
-        /// As wide as the picture allows and as lets the source, the output and the suffix of a block stay in the nearest
-        /// cache.
-        fn tile_width(size: usize, left: usize) -> usize {
-            let fitting = (super::NEAREST_CACHE / (3 * size)).max(128);
-            match fitting.min(left) / $lane {
-                4.. => 4 * $lane,
-                2.. => 2 * $lane,
-                _ => $lane,
             }
         }
 
