@@ -19,7 +19,7 @@ mod wide;
 use thiserror::Error;
 
 use job::Block;
-pub(crate) use job::Job;
+pub(crate) use job::{Cut, Job};
 
 /// The environment variable that forces a level.
 const FORCE: &str = "BELTWRIGHT_KERNELS";
@@ -75,6 +75,31 @@ impl RowsMut<'_> {
         let start = (top * self.stride_px).min(self.pixels.len());
         RowsMut {
             pixels: &mut self.pixels[start..],
+            stride_px: self.stride_px,
+        }
+    }
+
+    /// The first `rows` rows, and the others.
+    pub fn split(&mut self, rows: usize) -> (RowsMut<'_>, RowsMut<'_>) {
+        let stride_px = self.stride_px;
+        let (first, second) = self.pixels.split_at_mut(rows * stride_px);
+        let first = RowsMut {
+            pixels: first,
+            stride_px,
+        };
+        (
+            first,
+            RowsMut {
+                pixels: second,
+                stride_px,
+            },
+        )
+    }
+
+    /// The same rows, to read only.
+    pub fn read(&self) -> Rows<'_> {
+        Rows {
+            pixels: self.pixels,
             stride_px: self.stride_px,
         }
     }
@@ -223,19 +248,13 @@ impl Level {
         self.0.name()
     }
 
-    /// A part of the running extremum down the columns after van Herk 1992 and Gil & Werman 1993: three comparisons a
-    /// pixel whatever the window's length.
+    /// Some blocks of the running extremum down the columns (see [`job`] for the method).
     ///
-    /// Rows are taken in blocks as long as the window. `src` begins with row `src_top`, which must not come after the first
-    /// row of the block in which the job starts; `dst` begins with the first row that comes out. With `suffix[o]` the
-    /// extremum of rows `o..` of the *previous* block, row `o` of a block ends the window whose extremum is that of
-    /// `suffix[o + 1]` and of the prefix, rows `0..=o` of this block. When a block is complete its suffix takes the place of
-    /// the previous one. Rows outside the picture are ignored.
-    ///
-    /// `suffix` has one row more than the window, in which the prefix is kept from job to job, and rows of
-    /// [`suffix_stride`] bytes; how it is arranged is the kernel's business. What it holds at first does not matter.
-    pub(crate) fn slide(self, op: Extremum, job: Job, src: Rows, dst: RowsMut, suffix: RowsMut) {
-        dispatch!(self, slide(op, job, src, dst, suffix));
+    /// `src` begins with row `src_top`, which must not come after [`Job::first_row`]; `dst` begins with the first row that
+    /// comes out. Rows outside the picture are ignored. `memory` has [`Cut::memory_rows`] rows of [`memory_stride`] bytes,
+    /// which the kernel arranges as it likes and which go from job to job; the first block of a picture does not read them.
+    pub(crate) fn slide(self, op: Extremum, job: Job, src: Rows, dst: RowsMut, memory: RowsMut) {
+        dispatch!(self, slide(op, job, src, dst, memory));
     }
 
     /// Turns a picture over its main diagonal: `height` rows of `width` pixels in `src` become columns of `dst`.
@@ -260,8 +279,8 @@ impl Level {
     }
 }
 
-/// The length of a row of the suffix buffer for pictures of this width: whole vectors of every level.
-pub(crate) fn suffix_stride(width_px: usize) -> usize {
+/// The length of a row of a kernel's memory for pictures of this width: whole vectors of every level.
+pub(crate) fn memory_stride(width_px: usize) -> usize {
     width_px.next_multiple_of(64)
 }
 
