@@ -11,6 +11,8 @@ mod feret;
 mod field;
 mod findings;
 mod gauge;
+#[cfg(test)]
+mod gauge_accuracy;
 mod judge;
 mod measure;
 mod model;
