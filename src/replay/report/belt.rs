@@ -208,7 +208,7 @@ fn summary(whole: Stretch, facts: &Facts<'_>, unseen: &[Stretch]) -> Markup {
             @let (base, up) = (plot.y.at(0.0), plot.y.at(piece.kept as f64 / most_kept));
             @let down = plot.y.at(-(piece.rejected as f64) / most_rejected);
             @if piece.unseen_mm > 0.0 {
-                rect.unseen x=(n(left)) y=(n(plot.y.end)) width=(n(wide)) height=(n(plot.y.start - plot.y.end)) {
+                rect.unseen x=(n(left)) y=(n(plot.y.end - 12.0)) width=(n(wide)) height="12" {
                     title { (format!("{:.0} of {long_mm:.0} mm not seen", piece.unseen_mm)) }
                 }
             }
@@ -234,7 +234,7 @@ fn summary(whole: Stretch, facts: &Facts<'_>, unseen: &[Stretch]) -> Markup {
     );
     let caption = format!(
         "Too long to place each of {}: a column stands for {:.1} m of belt, kept parts upwards, rejected ones (hatched) downwards, \
-         each on its own scale. Columns hatched over their whole height hold belt that was not seen in time ({}).",
+         each on its own scale. A hatched mark on top means that belt in the column was not seen in time ({}).",
         counted(facts.cases.len(), "part", "parts"),
         long_mm / 1e3,
         counted(unseen.len(), "stretch", "stretches")
