@@ -70,7 +70,7 @@ pub(super) fn frame_size(settings: &Settings) -> SizePx {
 }
 
 /// The shapes that the settings name, at the picture's scale.
-fn taught(loaded: &Loaded) -> anyhow::Result<Vec<Silhouette>> {
+pub(super) fn taught(loaded: &Loaded) -> Result<Vec<Silhouette>, SettingsError> {
     let mut silhouettes = Vec::new();
     let mut problems = Vec::new();
     for shape in 0..loaded.settings.shapes.len() {
@@ -83,7 +83,7 @@ fn taught(loaded: &Loaded) -> anyhow::Result<Vec<Silhouette>> {
         }
     }
     if !problems.is_empty() {
-        return Err(SettingsError::Bad(Problems::sorted(problems)).into());
+        return Err(SettingsError::Bad(Problems::sorted(problems)));
     }
     Ok(silhouettes)
 }
