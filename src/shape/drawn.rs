@@ -76,6 +76,17 @@ impl Outline {
         Self::new(vec![outer, Self::round(0.0, 0.0, 0.55 * radius)])
     }
 
+    /// The same with every corner moved by `off` along x and y.
+    pub(crate) fn uneven(&self, mut off: impl FnMut() -> f64) -> Self {
+        let mut moved = |&(x, y): &(f64, f64)| (x + off(), y + off());
+        let rings = self.rings.iter();
+        Self::new(
+            rings
+                .map(|ring| ring.iter().map(&mut moved).collect())
+                .collect(),
+        )
+    }
+
     pub(crate) fn has(&self, x: f64, y: f64) -> bool {
         let crossings = |ring: &Vec<(f64, f64)>| {
             let next = ring.iter().cycle().skip(1);
