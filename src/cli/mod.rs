@@ -20,6 +20,7 @@ mod replay;
 mod results;
 mod station;
 mod teach;
+mod timeline;
 
 use std::io::{self, Write};
 
