@@ -9,7 +9,7 @@ use serde_json::{Value, json};
 use super::files::write_whole;
 use super::station::Station;
 use super::timeline;
-use crate::belt::Part;
+use crate::belt::{Part, Stretch};
 use crate::frames::Frame;
 use crate::recording::{Label, Recording};
 use crate::reject::line::{LineCounts, LineFault, Signal, SignalWriter};
@@ -24,6 +24,7 @@ const LABEL_GATE: f64 = 0.25;
 /// A finished replay.
 pub(super) struct Results<'a> {
     pub(super) station: &'a Station,
+    pub(super) folder: &'a Path,
     pub(super) recording: &'a Recording,
     pub(super) outcome: &'a Outcome,
     pub(super) signals: &'a [Signal],
@@ -94,9 +95,15 @@ impl Results<'_> {
 
     pub(super) fn score(&self, labels: &[Label]) -> Score {
         let parts = self.parts();
+        let unseen = self.outcome.unseen.iter().map(|(stretch, _)| *stretch);
+        let rejected: Vec<Stretch> = match self.settings().belt.unseen {
+            Policy::Reject => unseen.collect(),
+            Policy::Keep | Policy::Stop => Vec::new(),
+        };
         score(
             labels,
             &parts,
+            &rejected,
             self.settings().belt.part_pitch_mm * LABEL_GATE,
         )
     }

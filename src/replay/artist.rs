@@ -7,8 +7,8 @@ use crate::belt::{Part, View};
 use crate::frames::{Frame, Gray};
 use crate::inspect::{common, limits};
 use crate::settings::{Geometry, Settings};
-use crate::shape::{Judge, Judged, Silhouette, Verdict};
-use crate::stage::{Level, Plan, Region, Stage};
+use crate::shape::{Drawing, Judge, Judged, Silhouette, Verdict};
+use crate::stage::{Level, Plan, Region, Stage, Steps};
 
 /// Stage and judge once more, for pictures.
 pub struct Artist<'a> {
@@ -52,7 +52,51 @@ impl<'a> Artist<'a> {
         self.draw(frame, (view.along_mm, view.across_mm), view.judged, title)
     }
 
+    /// Looks for a part in `frame`, the one that was captured at `part.spoken_us`.
+    pub fn find<'f>(&mut self, frame: &'f Frame, part: &Part) -> Sight<'f> {
+        self.find_at(frame, (part.along_mm, part.across_mm), part.judged)
+    }
+
+    /// What each step makes of `picture`, a region of interest.
+    pub fn steps(&mut self, picture: Gray<'_>) -> Steps {
+        self.stage.steps(picture)
+    }
+
     /// The region nearest to `at` (along and across the belt) with what was judged of it.
+    fn find_at<'f>(
+        &mut self,
+        frame: &'f Frame,
+        at: (f64, f64),
+        judged: Option<Judged>,
+    ) -> Sight<'f> {
+        let geometry = self.geometry;
+        let at_speed_mm = frame.captured_us.as_seconds() * self.settings.belt.speed_mm_s;
+        let belt_mm = frame.belt_mm.unwrap_or(at_speed_mm);
+        let picture = frame.gray().window(geometry.window);
+        let scene = self.stage.run(picture);
+        let apart = |region: &Region| {
+            let along_mm = belt_mm - geometry.behind_upstream_mm(region.centroid_x + 0.5);
+            let across_mm = geometry.below_top_mm(region.centroid_y + 0.5);
+            (along_mm - at.0).hypot(across_mm - at.1)
+        };
+        let nearest = scene
+            .regions
+            .iter()
+            .min_by(|a, b| apart(a).total_cmp(&apart(b)));
+        let drawing = nearest.zip(judged).map(|(region, judged)| {
+            let runs = &scene.runs[region.runs.clone()];
+            self.judge.drawing(region, runs, &judged)
+        });
+        let box_px = |region: &Region| {
+            [region.x_min, region.y_min, region.x_max, region.y_max].map(|px| px as usize)
+        };
+        Sight {
+            picture,
+            part_px: nearest.map(box_px),
+            drawing,
+        }
+    }
+
     fn draw(
         &mut self,
         frame: &Frame,
@@ -60,52 +104,32 @@ impl<'a> Artist<'a> {
         judged: Option<Judged>,
         title: String,
     ) -> RgbImage {
-        let speed_mm_s = self.settings.belt.speed_mm_s;
-        let belt_mm = frame
-            .belt_mm
-            .unwrap_or(frame.captured_us.as_seconds() * speed_mm_s);
-        let picture = frame.gray().window(self.geometry.window);
-        let scene = self.stage.run(picture);
-        let apart = |region: &Region| {
-            let along_mm = belt_mm - self.geometry.behind_upstream_mm(region.centroid_x + 0.5);
-            let across_mm = self.geometry.below_top_mm(region.centroid_y + 0.5);
-            (along_mm - at.0).hypot(across_mm - at.1)
-        };
-        let nearest = scene
-            .regions
-            .iter()
-            .min_by(|a, b| apart(a).total_cmp(&apart(b)));
-        let words = words(title, judged, self.settings);
-        let Some(region) = nearest else {
-            return blank(picture, self.geometry, &words);
-        };
-        let runs = &scene.runs[region.runs.clone()];
-        let drawing = judged.map(|judged| self.judge.drawing(region, runs, &judged));
-        let marks = judged.zip(drawing.as_ref()).map(|(judged, drawing)| Marks {
-            drawing,
-            missing: judged.missing,
-            excess: judged.excess,
-        });
+        let sight = self.find_at(frame, at, judged);
+        let marks = judged.zip(sight.drawing.as_ref());
+        let all = [0, 0, sight.picture.width_px, sight.picture.height_px];
         draw_part(&Sketch {
-            picture,
-            part_px: [region.x_min, region.y_min, region.x_max, region.y_max].map(|px| px as usize),
-            marks,
+            picture: sight.picture,
+            // Nothing is found any more: all of the picture, with the words.
+            part_px: sight.part_px.unwrap_or(all),
+            marks: marks.map(|(judged, drawing)| Marks {
+                drawing,
+                missing: judged.missing,
+                excess: judged.excess,
+            }),
             scale: self.geometry.scale,
-            words: &words,
+            words: &words(title, judged, self.settings),
         })
     }
 }
 
-/// A frame in which nothing is found any more: all of it, with the words.
-fn blank(picture: Gray<'_>, geometry: Geometry, words: &[String]) -> RgbImage {
-    let part_px = [0, 0, picture.width_px, picture.height_px];
-    draw_part(&Sketch {
-        picture,
-        part_px,
-        marks: None,
-        scale: geometry.scale,
-        words,
-    })
+/// A part found again.
+pub struct Sight<'f> {
+    /// The region of interest.
+    pub picture: Gray<'f>,
+    /// The part's box in it: left, top, right, bottom (the last two exclusive); `None` if nothing is found any more.
+    pub part_px: Option<[usize; 4]>,
+    /// Taught outline and flaws; `None` for a part that was never seen whole.
+    pub drawing: Option<Drawing>,
 }
 
 fn words(title: String, judged: Option<Judged>, settings: &Settings) -> Vec<String> {
