@@ -149,14 +149,15 @@ pub struct Inspector {
 impl Inspector {
     /// Makes every buffer. `taught` has one silhouette for each of `settings.shapes`.
     pub fn new(settings: &Settings, taught: &[Silhouette], level: Level) -> Self {
+        let geometry = settings.geometry();
         let shapes = settings.shapes.iter().map(|shape| limits(settings, shape));
+        let shapes = taught.iter().cloned().zip(shapes).collect();
+        let mut judge = Judge::new(shapes, common(settings));
+        judge.reserve(geometry.window.width_px, geometry.window.height_px);
         Self {
-            geometry: settings.geometry(),
+            geometry,
             stage: Stage::new(&stage::Plan::of(settings), level),
-            judge: Judge::new(
-                taught.iter().cloned().zip(shapes).collect(),
-                common(settings),
-            ),
+            judge,
         }
     }
 

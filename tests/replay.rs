@@ -169,15 +169,18 @@ fn belt_that_no_frame_shows_is_unseen_and_rejected_and_nothing_else_changes() {
         };
         all.filter(outside)
             .map(|part| {
+                // A part may have been seen in one of the missing frames too; what it is does not change.
                 let mut part = part.clone();
-                part["part"] = Value::Null;
+                for key in ["part", "views", "first_us"] {
+                    part[key] = Value::Null;
+                }
                 part
             })
             .collect()
     };
     assert!(parts(&whole).len() > 10);
     assert_eq!(parts(&whole), parts(&cut));
-    let open_over_gap = cut["signals"].as_array().unwrap().len() > 0;
+    let open_over_gap = !cut["signals"].as_array().unwrap().is_empty();
     assert!(open_over_gap && cut["summary"]["unseen_mm"].as_f64().unwrap() > 39.9);
 }
 

@@ -21,6 +21,7 @@ mod report;
 mod results;
 mod station;
 mod teach;
+mod timeline;
 
 use std::io::{self, Write};
 

@@ -4,13 +4,13 @@ use std::path::Path;
 
 use anyhow::Context;
 
-use crate::inspect::Inspector;
+use crate::inspect::{Inspector, limits};
 use crate::recording::{Recording, RecordingError, SizePx};
 use crate::replay::Artist;
 use crate::settings::{
     self, ElementKind, Loaded, PartSize, Problem, Problems, Settings, SettingsError,
 };
-use crate::shape::{Figures, Measurer, Silhouette, Taught};
+use crate::shape::{Figures, Finding, Measurer, Model, Silhouette, Taught, findings};
 use crate::stage::Level;
 
 /// A station as its settings describe it.
@@ -70,7 +70,7 @@ pub(super) fn frame_size(settings: &Settings) -> SizePx {
 }
 
 /// The shapes that the settings name, at the picture's scale.
-fn taught(loaded: &Loaded) -> anyhow::Result<Vec<Silhouette>> {
+pub(super) fn taught(loaded: &Loaded) -> Result<Vec<Silhouette>, SettingsError> {
     let mut silhouettes = Vec::new();
     let mut problems = Vec::new();
     for shape in 0..loaded.settings.shapes.len() {
@@ -83,7 +83,7 @@ fn taught(loaded: &Loaded) -> anyhow::Result<Vec<Silhouette>> {
         }
     }
     if !problems.is_empty() {
-        return Err(SettingsError::Bad(Problems::sorted(problems)).into());
+        return Err(SettingsError::Bad(Problems::sorted(problems)));
     }
     Ok(silhouettes)
 }
@@ -104,7 +104,18 @@ fn one_shape(loaded: &Loaded, shape: usize) -> Result<(Silhouette, Vec<Problem>)
         anyhow::Ok((silhouette, size))
     };
     let (silhouette, size) = read().map_err(wrong)?;
-    Ok((silhouette, loaded.part_problems(shape, &size)))
+    let mut problems = loaded.part_problems(shape, &size);
+    let limits = limits(&loaded.settings, &loaded.settings.shapes[shape]);
+    let found = findings(
+        &Model::new(silhouette.clone()),
+        &limits,
+        silhouette.mm_per_px,
+    );
+    let problem = |finding: Finding| {
+        loaded.problem(&format!("shape[{shape}].{}", finding.key), finding.problem)
+    };
+    problems.extend(found.into_iter().map(problem));
+    Ok((silhouette, problems))
 }
 
 fn size_of(silhouette: &Silhouette, element: ElementKind) -> anyhow::Result<PartSize> {

@@ -63,7 +63,7 @@ fn figures_come_near_the_drawn_truth_at_any_angle() {
     let asked = std::env::var("POSES")
         .ok()
         .and_then(|text| text.parse().ok());
-    let count: u64 = asked.unwrap_or(25);
+    let count: u64 = asked.unwrap_or(10);
     let shapes: [(&str, Shape, f64); 2] = [
         ("star", Outline::star, 76.0),
         ("gasket", Outline::gasket, 60.0),

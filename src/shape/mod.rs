@@ -41,7 +41,6 @@ pub use gauge::gauge_masks;
 pub use judge::{Drawing, Judge};
 pub use measure::{Measurer, Measures, skeleton};
 pub use model::Model;
-pub use pose::Found;
 pub use silhouette::{MAX_SIDE_PX, Silhouette};
 pub use store::{Figures, GrayPicture, Taught, read_gray};
 pub use symmetry::Symmetry;

@@ -15,11 +15,11 @@ use super::{Model, Pose, edge};
 
 /// A pose and how well it fits.
 #[derive(Clone, Copy, Debug, Default, PartialEq)]
-pub struct Found {
+pub(super) struct Found {
     /// Where the silhouette lies; of poses that look the same the one with the smallest angle, face up.
-    pub pose: Pose,
+    pub(super) pose: Pose,
     /// Overlap over union.
-    pub fit: f64,
+    pub(super) fit: f64,
 }
 
 /// How many poses are looked at with all points in the end, at most.

@@ -123,7 +123,7 @@ fn count() -> u64 {
     let asked = std::env::var("POSES")
         .ok()
         .and_then(|text| text.parse().ok());
-    asked.unwrap_or(40)
+    asked.unwrap_or(24)
 }
 
 /// A bite, a burr or a broken corner; that one in one of the given directions, in radians.
