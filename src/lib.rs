@@ -15,6 +15,8 @@ pub mod clock;
 
 pub mod health;
 
+pub mod stats;
+
 pub mod settings;
 
 pub mod frames;

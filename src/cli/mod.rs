@@ -17,6 +17,7 @@ mod files;
 mod interrupt;
 mod judge;
 mod replay;
+mod report;
 mod results;
 mod station;
 mod teach;

@@ -5,17 +5,19 @@ use std::path::PathBuf;
 use std::sync::atomic::Ordering;
 use std::thread;
 
-use anyhow::{Context, ensure};
+use anyhow::ensure;
 use indicatif::{ProgressBar, ProgressStyle};
 
 use super::interrupt::stop_flag;
+use super::report;
 use super::results::Results;
 use super::station::Station;
 use super::{DeviceFailed, Outcome as Ending, caution};
 use crate::clock::Monotonic;
+use crate::health::Durations;
 use crate::recording::{Label, Recording};
 use crate::reject::line::{Coils, DryRun, Line, LineError, LineFault, ModbusSerial, Signal};
-use crate::replay::{self, Outcome, Pace};
+use crate::replay::{self, Outcome, Pace, Score};
 use crate::sorter::{Event, Sorter};
 use crate::units::Micros;
 
@@ -47,6 +49,9 @@ pub(super) struct Args {
     /// Draw one picture of each part into this folder
     #[arg(long, value_name = "DIR")]
     pictures: Option<PathBuf>,
+    /// Write a report: one HTML file with counts, error bounds, charts and pictures. Takes in labels.csv where there is one
+    #[arg(long, value_name = "FILE.html")]
+    report: Option<PathBuf>,
     /// The serial port of a relay board to try on the bench; only together with --armed
     #[arg(long, value_name = "PORT", requires = "armed")]
     line: Option<String>,
@@ -69,6 +74,11 @@ impl Args {
         let station = Station::open(&self.settings)?;
         let recording = station.recording(&self.recording)?;
         let labels = self.labels(&recording)?;
+        // Read before the replay, as the settings were.
+        let sources = match &self.report {
+            Some(_) => report::sources(&station)?,
+            None => Vec::new(),
+        };
         let (first_us, _) = recording.span_us();
         let clock =
             (self.paced || self.armed).then(|| Monotonic::reading(first_us - HEAD_START_US));
@@ -79,22 +89,28 @@ impl Args {
             .map_err(device)?;
         let ran = self.sort(&station, &recording, clock, &mut *line, &mut signals);
         let off = line.all_off(first_us, &mut Vec::new()).map_err(device);
-        let outcome = ran?;
+        let (outcome, took) = ran?;
         off?;
         let results = Results {
             station: &station,
+            folder: &self.recording,
             recording: &recording,
             outcome: &outcome,
             signals: &signals,
         };
-        self.report(&results, labels.as_deref(), &mut *line, out)
+        let score = labels.as_deref().map(|labels| (labels, results.score(labels)));
+        if let Some(file) = &self.report {
+            let labels = score.as_ref().map(|(labels, score)| (*labels, score));
+            report::write(file, &results, &sources, labels, &took)?;
+        }
+        self.tell(&results, score.filter(|_| self.check_labels), &mut *line, out)
     }
 
-    /// Writes the files that were asked for, then tells what came of it.
-    fn report(
+    /// Writes the tables and pictures that were asked for, then tells what came of it.
+    fn tell(
         &self,
         results: &Results<'_>,
-        labels: Option<&[Label]>,
+        score: Option<(&[Label], Score)>,
         line: &mut dyn Line,
         out: &mut dyn Write,
     ) -> anyhow::Result<Ending> {
@@ -107,7 +123,6 @@ impl Args {
         if let Some(folder) = &self.pictures {
             results.draw_pictures(folder)?;
         }
-        let score = labels.map(|labels| (labels, results.score(labels)));
         let faults: Vec<LineFault> = std::iter::from_fn(|| line.next_fault()).collect();
         if self.json {
             results.print_json(score.as_ref(), line.counts(), &faults, out)?;
@@ -123,17 +138,18 @@ impl Args {
         })
     }
 
+    /// The labels, where they are of use: the comparison must have them, the report takes what is there.
     fn labels(&self, recording: &Recording) -> anyhow::Result<Option<Vec<Label>>> {
-        if !self.check_labels {
+        if !self.check_labels && self.report.is_none() {
             return Ok(None);
         }
-        let labels = recording.labels()?.with_context(|| {
-            let folder = self.recording.display();
-            format!(
-                "{folder}: no labels.csv to compare with; leave --check-labels out, or write one"
-            )
-        })?;
-        Ok(Some(labels))
+        let labels = recording.labels()?;
+        ensure!(
+            labels.is_some() || !self.check_labels,
+            "{}: no labels.csv to compare with; leave --check-labels out, or write one",
+            self.recording.display()
+        );
+        Ok(labels)
     }
 
     /// The dry run, or the port with every precaution taken.
@@ -162,7 +178,7 @@ impl Args {
         clock: Option<Monotonic>,
         line: &mut dyn Line,
         signals: &mut Vec<Signal>,
-    ) -> anyhow::Result<Outcome> {
+    ) -> anyhow::Result<(Outcome, Durations)> {
         let settings = station.settings();
         let workers = self.workers.map_or_else(processors, usize::from);
         let inspectors = (0..workers).map(|_| station.inspector()).collect();
@@ -178,7 +194,7 @@ impl Args {
             }
             anyhow::Ok(())
         };
-        replay::run(
+        let took = replay::run(
             recording,
             inspectors,
             &mut sorter,
@@ -193,7 +209,7 @@ impl Args {
             "stopped by hand after {parts} parts; nothing was written"
         );
         outcome.health = sorter.health().clone();
-        Ok(outcome)
+        Ok((outcome, took))
     }
 
     /// A bar on a terminal, nothing elsewhere.

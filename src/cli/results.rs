@@ -23,6 +23,7 @@ const LABEL_GATE: f64 = 0.25;
 /// A finished replay.
 pub(super) struct Results<'a> {
     pub(super) station: &'a Station,
+    pub(super) folder: &'a Path,
     pub(super) recording: &'a Recording,
     pub(super) outcome: &'a Outcome,
     pub(super) signals: &'a [Signal],

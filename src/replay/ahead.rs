@@ -8,8 +8,11 @@ use std::sync::mpsc::{Receiver, SyncSender, sync_channel};
 use std::thread::Scope;
 
 use super::drive::Looks;
+use crate::clock::Monotonic;
 use crate::frames::Frame;
+use crate::health::Durations;
 use crate::inspect::{Inspector, Look};
+use crate::units::Micros;
 
 /// Looks that wait in each worker's queue.
 const QUEUE: usize = 4;
@@ -18,11 +21,18 @@ const QUEUE: usize = 4;
 pub struct Ahead<E> {
     lanes: Vec<Lane<E>>,
     next: usize,
+    took: Durations,
 }
 
 struct Lane<E> {
-    looks: Receiver<Result<Look, E>>,
+    looks: Receiver<Result<Timed, E>>,
     used: SyncSender<Look>,
+}
+
+/// A look and how long the inspector took for it.
+struct Timed {
+    look: Look,
+    took: Micros,
 }
 
 impl<E: Send> Ahead<E> {
@@ -47,7 +57,15 @@ impl<E: Send> Ahead<E> {
         Self {
             lanes: inspectors.into_iter().enumerate().map(lane).collect(),
             next: 0,
+            took: Durations::default(),
         }
+    }
+}
+
+impl<E> Ahead<E> {
+    /// How long the inspectors took for the frames that were handed over so far, decoding left out.
+    pub fn took(&self) -> &Durations {
+        &self.took
     }
 }
 
@@ -55,15 +73,18 @@ fn work<E>(
     mut inspector: Inspector,
     frames: impl Iterator<Item = usize>,
     read: impl Fn(usize, &mut Frame) -> Result<(), E>,
-    send: &SyncSender<Result<Look, E>>,
+    send: &SyncSender<Result<Timed, E>>,
     spare: &Receiver<Look>,
 ) {
+    let clock = Monotonic::reading(Micros::ZERO);
     let mut frame = Frame::default();
     for k in frames {
         let look = read(k, &mut frame).map(|()| {
             let mut look = spare.try_recv().unwrap_or_default();
+            let begun = clock.now();
             inspector.inspect(&frame, &mut look);
-            look
+            let took = clock.now() - begun;
+            Timed { look, took }
         });
         let failed = look.is_err();
         // The consumer is gone: it has seen an error or was told to stop.
@@ -82,7 +103,9 @@ impl<E> Looks for Ahead<E> {
         self.next += 1;
         match lane.looks.recv() {
             Ok(next) => {
-                let used = std::mem::replace(look, next?);
+                let next = next?;
+                self.took.add(next.took);
+                let used = std::mem::replace(look, next.look);
                 // A full return queue only means that this buffer is not needed again.
                 let _ = lane.used.try_send(used);
                 Ok(true)

@@ -1,6 +1,6 @@
 //! Finds a part again in the frame that speaks for it, and draws it with its marks and figures.
 
-use image::RgbImage;
+use image::{GrayImage, Luma, RgbImage};
 
 use super::pictures::{Marks, Sketch, draw_part};
 use crate::belt::{Part, View};
@@ -60,23 +60,11 @@ impl<'a> Artist<'a> {
         judged: Option<Judged>,
         title: String,
     ) -> RgbImage {
-        let speed_mm_s = self.settings.belt.speed_mm_s;
-        let belt_mm = frame
-            .belt_mm
-            .unwrap_or(frame.captured_us.as_seconds() * speed_mm_s);
         let picture = frame.gray().window(self.geometry.window);
+        let place = Place::new(at, frame, self.settings);
         let scene = self.stage.run(picture);
-        let apart = |region: &Region| {
-            let along_mm = belt_mm - self.geometry.behind_upstream_mm(region.centroid_x + 0.5);
-            let across_mm = self.geometry.below_top_mm(region.centroid_y + 0.5);
-            (along_mm - at.0).hypot(across_mm - at.1)
-        };
-        let nearest = scene
-            .regions
-            .iter()
-            .min_by(|a, b| apart(a).total_cmp(&apart(b)));
         let words = words(title, judged, self.settings);
-        let Some(region) = nearest else {
+        let Some(region) = place.nearest(&scene.regions, &self.geometry) else {
             return blank(picture, self.geometry, &words);
         };
         let runs = &scene.runs[region.runs.clone()];
@@ -88,10 +76,95 @@ impl<'a> Artist<'a> {
         });
         draw_part(&Sketch {
             picture,
-            part_px: [region.x_min, region.y_min, region.x_max, region.y_max].map(|px| px as usize),
+            part_px: box_px(region),
             marks,
             scale: self.geometry.scale,
             words: &words,
+        })
+    }
+
+    /// What each step made of the part and half its size of belt around it; `frame` as for [`Artist::draw_part`]. Empty when
+    /// nothing is found any more.
+    pub fn steps(&mut self, frame: &Frame, part: &Part) -> Vec<(&'static str, GrayImage)> {
+        let picture = frame.gray().window(self.geometry.window);
+        let at = (part.along_mm, part.across_mm);
+        let place = Place::new(at, frame, self.settings);
+        let regions = &self.stage.run(picture).regions;
+        let Some(part_px) = place.nearest(regions, &self.geometry).map(box_px) else {
+            return Vec::new();
+        };
+        let shown = Crop::around(part_px, picture);
+        let steps = self.stage.steps(picture);
+        let step = |pixels| Gray {
+            pixels,
+            stride_px: picture.width_px,
+            ..picture
+        };
+        vec![
+            ("gray", shown.cut(picture)),
+            ("top-hat", shown.cut(step(&steps.top_hat))),
+            ("binary", shown.cut(step(&steps.binary))),
+            ("filled", shown.cut(step(&steps.filled))),
+        ]
+    }
+}
+
+fn box_px(region: &Region) -> [usize; 4] {
+    [region.x_min, region.y_min, region.x_max, region.y_max].map(|px| px as usize)
+}
+
+/// Where a part lies, and where the belt was when a frame showed it.
+struct Place {
+    at: (f64, f64),
+    belt_mm: f64,
+}
+
+impl Place {
+    fn new(at: (f64, f64), frame: &Frame, settings: &Settings) -> Self {
+        let at_speed = || frame.captured_us.as_seconds() * settings.belt.speed_mm_s;
+        Self {
+            at,
+            belt_mm: frame.belt_mm.unwrap_or_else(at_speed),
+        }
+    }
+
+    fn nearest<'r>(&self, regions: &'r [Region], geometry: &Geometry) -> Option<&'r Region> {
+        let apart = |region: &Region| {
+            let along_mm = self.belt_mm - geometry.behind_upstream_mm(region.centroid_x + 0.5);
+            let across_mm = geometry.below_top_mm(region.centroid_y + 0.5);
+            (along_mm - self.at.0).hypot(across_mm - self.at.1)
+        };
+        regions
+            .iter()
+            .min_by(|a, b| apart(a).total_cmp(&apart(b)))
+    }
+}
+
+/// A piece of a picture.
+#[derive(Clone, Copy)]
+struct Crop {
+    left: usize,
+    top: usize,
+    width: usize,
+    height: usize,
+}
+
+impl Crop {
+    /// A part and half its size around it, as far as the picture goes.
+    fn around([left, top, right, bottom]: [usize; 4], picture: Gray<'_>) -> Self {
+        let around = (right - left).max(bottom - top) / 2;
+        let (left, top) = (left.saturating_sub(around), top.saturating_sub(around));
+        Self {
+            left,
+            top,
+            width: (right + around).min(picture.width_px) - left,
+            height: (bottom + around).min(picture.height_px) - top,
+        }
+    }
+
+    fn cut(self, picture: Gray<'_>) -> GrayImage {
+        GrayImage::from_fn(self.width as u32, self.height as u32, |x, y| {
+            Luma([picture.row(self.top + y as usize)[self.left + x as usize]])
         })
     }
 }

@@ -5,6 +5,7 @@ mod artist;
 mod drive;
 mod outcome;
 mod pictures;
+pub mod report;
 mod score;
 mod summary;
 
@@ -16,11 +17,13 @@ pub use outcome::{Outcome, Row, parts_csv, rows};
 pub use score::{Match, Score, score};
 pub use summary::{Summary, WorstMargin, summarize};
 
+use crate::health::Durations;
 use crate::inspect::Inspector;
 use crate::recording::{Recording, RecordingError};
 use crate::sorter::{Event, Sorter};
 
 /// Runs a whole recording through `sorter`, with one worker for each of `inspectors`; `frame` is told of every frame.
+/// Tells how long the inspectors took: the one thing here that differs from run to run.
 ///
 /// # Errors
 /// The first of the recording's or of `each`.
@@ -31,10 +34,11 @@ pub fn run<E: From<RecordingError>>(
     pace: &Pace,
     frame: impl FnMut(),
     each: impl FnMut(&Event) -> Result<(), E>,
-) -> Result<(), E> {
+) -> Result<Durations, E> {
     std::thread::scope(|scope| {
         let read = |k, frame: &mut _| recording.read_into(k, frame);
         let mut looks = Ahead::spawn(scope, inspectors, recording.len(), read);
-        drive(&mut looks, sorter, pace, frame, each)
+        drive(&mut looks, sorter, pace, frame, each)?;
+        Ok(looks.took().clone())
     })
 }

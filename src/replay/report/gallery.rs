@@ -1,0 +1,106 @@
+//! Pictures of the parts that went wrong, and of those nearest to a limit.
+
+use maud::{Markup, html};
+
+use super::agreement::verdict;
+use super::facts::{Case, Facts, Wrong};
+use super::picture::{Album, Picture};
+use super::words::mm;
+use crate::recording::RecordingError;
+
+/// Pictures of misses, and of false rejects.
+const WRONG: usize = 18;
+/// Pictures of parts near a limit.
+const NEAREST: usize = 12;
+
+/// The section.
+///
+/// # Errors
+/// Those of reading frames.
+pub fn gallery(facts: &Facts<'_>, album: &mut Album<'_>) -> Result<Markup, RecordingError> {
+    let misses = wrong(facts, Wrong::Miss);
+    let false_rejects = wrong(facts, Wrong::FalseReject);
+    let nearest = nearest(facts);
+    let key = "The thin line is the taught outline; what is missing is hatched one way, what is too much the other way; a ring marks \
+               the worst point of each.";
+    Ok(html! {
+        p { (key) }
+        @if facts.labels.is_some() {
+            h3 { "Misses" } (sheet(&misses, WRONG, album)?)
+            h3 { "False rejects" } (sheet(&false_rejects, WRONG, album)?)
+        }
+        h3 { "Nearest to a limit" }
+        (sheet(&nearest, NEAREST, album)?)
+    })
+}
+
+fn wrong<'f>(facts: &'f Facts<'_>, how: Wrong) -> Vec<&'f Case<'f>> {
+    let cases = facts.cases.iter();
+    cases.filter(|case| case.wrong() == Some(how)).collect()
+}
+
+/// Parts that are right, by their distance to the limit on either side.
+fn nearest<'f>(facts: &'f Facts<'_>) -> Vec<&'f Case<'f>> {
+    let distance = |case: &Case<'_>| {
+        let severity = case.severity().filter(|severity| severity.is_finite())?;
+        Some((severity - 1.0).abs())
+    };
+    let right = facts.cases.iter().filter(|case| case.wrong().is_none());
+    let mut near: Vec<_> = right
+        .filter_map(|case| Some((distance(case)?, case)))
+        .collect();
+    near.sort_by(|a, b| a.0.total_cmp(&b.0));
+    near.truncate(NEAREST);
+    near.into_iter().map(|(_, case)| case).collect()
+}
+
+fn sheet(cases: &[&Case<'_>], most: usize, album: &mut Album<'_>) -> Result<Markup, RecordingError> {
+    let mut shown = Vec::new();
+    for case in cases.iter().take(most) {
+        if let Some(picture) = album.part(case.part)? {
+            shown.push((*case, picture));
+        }
+    }
+    Ok(html! {
+        @if cases.is_empty() { p { "None." } }
+        div.gallery { @for (case, picture) in &shown { (card(case, picture)) } }
+        @if cases.len() > most {
+            p.soft { "The first " (most) " of " (cases.len()) ", in the order of the belt." }
+        }
+    })
+}
+
+fn card(case: &Case<'_>, picture: &Picture) -> Markup {
+    let part = case.part;
+    html! {
+        figure {
+            (image(picture, &describe(case)))
+            figcaption {
+                @match case.wrong() {
+                    Some(Wrong::Miss) => span.tag.miss { "miss" },
+                    Some(Wrong::FalseReject) => span.tag.false-reject { "false reject" },
+                    None => {},
+                }
+                b { "part " (part.number) } ", " (verdict(case)) br;
+                (format!("{:.1} mm along, {:.1} mm across", part.along_mm, part.across_mm))
+                @if let Some(figures) = &case.figures {
+                    br; "missing " (mm(figures.missing_mm)) " of " (mm(figures.missing_limit_mm))
+                    " mm, excess " (mm(figures.excess_mm)) " of " (mm(figures.excess_limit_mm)) " mm"
+                }
+                @if let Some(label) = case.label {
+                    br; "label: " (label.verdict)
+                    @if !label.note.is_empty() { " (" (label.note) ")" }
+                }
+            }
+        }
+    }
+}
+
+fn describe(case: &Case<'_>) -> String {
+    format!("Part {} with the taught outline, what is missing and what is too much: {}", case.part.number, verdict(case))
+}
+
+/// A picture of the page.
+pub fn image(picture: &Picture, alt: &str) -> Markup {
+    html! { img src=(picture.uri) width=(picture.width_px) height=(picture.height_px) alt=(alt); }
+}
