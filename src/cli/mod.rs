@@ -12,6 +12,7 @@
 
 mod caution;
 mod check;
+mod compare;
 mod draw;
 mod files;
 mod interrupt;
@@ -19,6 +20,7 @@ mod judge;
 mod replay;
 mod report;
 mod results;
+mod sorting;
 mod station;
 mod teach;
 
@@ -44,6 +46,7 @@ enum Command {
     Check(check::Args),
     Teach(teach::Args),
     Judge(judge::Args),
+    Compare(compare::Args),
     Draw(draw::Args),
 }
 
@@ -75,6 +78,7 @@ impl Cli {
             Command::Check(args) => args.run(&mut out),
             Command::Teach(args) => args.run(&mut out),
             Command::Judge(args) => args.run(&mut out),
+            Command::Compare(args) => args.run(&mut out),
             Command::Draw(args) => args.run(),
         };
         let flushed = out.flush();

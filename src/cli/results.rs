@@ -18,7 +18,7 @@ use crate::settings::{Policy, Settings};
 use crate::shape::Verdict;
 
 /// A label may lie this share of the part pitch outside the box of its part.
-const LABEL_GATE: f64 = 0.25;
+pub(super) const LABEL_GATE: f64 = 0.25;
 
 /// A finished replay.
 pub(super) struct Results<'a> {
