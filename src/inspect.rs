@@ -4,9 +4,12 @@
 use crate::belt::{Cut, Extent, Stretch, View};
 use crate::frames::Frame;
 use crate::settings::{self, FaceDown, Geometry, Settings, Travel};
-use crate::shape::{Common, Judge, Judged, Limits, Silhouette};
+use crate::shape::{Common, Judge, Judged, Limits, Reason, Silhouette};
 use crate::stage::{self, Level, Region, Stage};
 use crate::units::Micros;
+
+/// A taught shape may reach this far over the picture's edge before the part counts as cut: the pose is not exact.
+const OVER_PX: i32 = 2;
 
 /// The belt that the region of interest shows when the belt reads 0; other readings move it along.
 pub fn seen_at_zero(geometry: &Geometry) -> Stretch {
@@ -32,19 +35,38 @@ fn extent(geometry: &Geometry, region: &Region) -> Extent {
     }
 }
 
-fn cut(geometry: &Geometry, region: &Region) -> Cut {
-    let left = region.x_min == 0;
-    let right = region.x_max as usize == geometry.window.width_px;
+/// Which edges a box of pixels reaches over: left, top, right, bottom, the last two exclusive.
+fn cut(geometry: &Geometry, [left, top, right, bottom]: [i32; 4]) -> Cut {
+    let (left, right) = (left <= 0, right >= geometry.window.width_px as i32);
     let (upstream, downstream) = match geometry.travel {
         Travel::Right => (left, right),
         Travel::Left => (right, left),
     };
-    let side = region.y_min == 0 || region.y_max as usize == geometry.window.height_px;
+    let side = top <= 0 || bottom >= geometry.window.height_px as i32;
     Cut {
         upstream,
         downstream,
         side,
     }
+}
+
+/// Like [`cut`] for the taught shape that lies on a region. Light that falls off, and a top-hat that knows only half of
+/// its element's surroundings there, can hide the strip of a part along the picture's edge: the region keeps off the edge,
+/// but the shape that fits it reaches over.
+fn cut_of_shape(geometry: &Geometry, judge: &Judge, judged: &Judged) -> Cut {
+    if judged.reasons.has(Reason::Unknown) || judged.reasons.has(Reason::Touching) {
+        return Cut::default();
+    }
+    let [left, top, right, bottom] = judge.taught_box();
+    cut(
+        geometry,
+        [
+            left + OVER_PX,
+            top + OVER_PX,
+            right - OVER_PX,
+            bottom - OVER_PX,
+        ],
+    )
 }
 
 /// One region of one frame, in millimetres on a belt that reads 0.
@@ -146,15 +168,22 @@ impl Inspector {
         look.specks = scene.specks;
         look.spots.clear();
         for region in &scene.regions {
-            let cut = cut(&self.geometry, region);
+            let box_px =
+                [region.x_min, region.y_min, region.x_max, region.y_max].map(|px| px as i32);
+            let mut cut = cut(&self.geometry, box_px);
             let runs = &scene.runs[region.runs.clone()];
+            let mut judged = (!cut.any()).then(|| self.judge.judge(region, runs));
+            if let Some(of) = &judged {
+                cut = cut_of_shape(&self.geometry, &self.judge, of);
+                judged = judged.filter(|_| !cut.any());
+            }
             look.spots.push(Spot {
                 extent: extent(&self.geometry, region),
                 along_mm: -self.geometry.behind_upstream_mm(region.centroid_x + 0.5),
                 across_mm: self.geometry.below_top_mm(region.centroid_y + 0.5),
                 area_mm2: self.geometry.scale.mm2(region.area_px as f64),
                 cut,
-                judged: (!cut.any()).then(|| self.judge.judge(region, runs)),
+                judged,
             });
         }
     }
@@ -217,12 +246,8 @@ mod tests {
             upstream: true,
             ..Cut::default()
         };
-        assert_eq!(cut(&geometry(Travel::Right), &region(0, 9)), entering);
-        assert_eq!(cut(&geometry(Travel::Left), &region(500, 560)), entering);
-        let side = Region {
-            y_max: 400,
-            ..region(5, 9)
-        };
-        assert!(cut(&geometry(Travel::Right), &side).side);
+        assert_eq!(cut(&geometry(Travel::Right), [0, 4, 9, 8]), entering);
+        assert_eq!(cut(&geometry(Travel::Left), [500, 4, 560, 8]), entering);
+        assert!(cut(&geometry(Travel::Right), [5, 4, 9, 400]).side);
     }
 }

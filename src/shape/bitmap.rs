@@ -168,6 +168,18 @@ impl Bitmap {
         })
     }
 
+    /// The box around the set: left, top, right, bottom, the last two exclusive; all 0 when it is empty.
+    pub fn bounds(&self) -> [i32; 4] {
+        let mut bounds: Option<[usize; 4]> = None;
+        for y in 0..self.height_px {
+            for (x0, x1) in self.runs(y) {
+                let [left, top, right, _] = bounds.unwrap_or([x0, y, x1, y]);
+                bounds = Some([left.min(x0), top, right.max(x1), y + 1]);
+            }
+        }
+        bounds.map_or([0; 4], |bounds| bounds.map(|px| px as i32))
+    }
+
     /// The whole set as one region with its runs, whether it hangs together or not. `None` if the set is empty.
     pub fn to_region(&self) -> Option<(Region, Vec<Run>)> {
         let mut runs = Vec::new();

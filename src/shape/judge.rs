@@ -128,6 +128,19 @@ impl Judge {
         }
     }
 
+    /// The box around the taught shape as it lies on the region that was judged last: left, top, right, bottom in the
+    /// picture's pixels, the last two exclusive. Part of it may lie outside the picture.
+    pub fn taught_box(&self) -> [i32; 4] {
+        let Overlay { origin, taught, .. } = &self.overlay;
+        let [left, top, right, bottom] = taught.bounds();
+        [
+            left + origin.0,
+            top + origin.1,
+            right + origin.0,
+            bottom + origin.1,
+        ]
+    }
+
     /// What `judge` saw, pixel by pixel. Takes its time and memory: it is for pictures.
     pub fn drawing(&mut self, region: &Region, runs: &[Run], judged: &Judged) -> Drawing {
         let model = &self.shapes[judged.shape].0;

@@ -109,23 +109,31 @@ impl<'a> Same<'a> {
     /// Whether some turn of the mirror image is the silhouette again.
     fn anywhere_mirrored(&mut self, turns: u32) -> bool {
         let span = 360.0 / f64::from(turns);
-        let step = (1.0 / self.model.radius_px.max(1.0)).to_degrees().max(0.5);
-        let count = (span / step).ceil() as u32;
-        let pose = |angle_deg| Pose {
-            angle_deg,
+        // Two pixels at the rim, then half a pixel.
+        let coarse = (2.0 / self.model.radius_px.max(1.0)).to_degrees().clamp(0.2, 9.0);
+        let best = self.best_mirrored(0.0, coarse, (span / coarse).ceil() as u32);
+        let best = self.best_mirrored(best - coarse, coarse / 4.0, 9);
+        self.at(self.mirrored(best))
+    }
+
+    fn mirrored(&self, angle_deg: f64) -> Pose {
+        Pose {
+            angle_deg: angle_deg.rem_euclid(360.0),
             flipped: true,
             ..self.model.identity()
-        };
-        let angles = (0..count).map(|i| f64::from(i) * span / f64::from(count));
-        let poses: Vec<Pose> = angles.map(pose).collect();
-        let mut best = (0.0, Pose::default());
-        for pose in poses {
-            let fit = self.fit(pose);
+        }
+    }
+
+    /// The angle of the best fit among `count` from `first` on.
+    fn best_mirrored(&mut self, first: f64, step: f64, count: u32) -> f64 {
+        let mut best = (0.0, first);
+        for angle in (0..count).map(|i| first + f64::from(i) * step) {
+            let fit = self.fit(self.mirrored(angle));
             if fit > best.0 {
-                best = (fit, pose);
+                best = (fit, angle);
             }
         }
-        self.at(best.1)
+        best.1
     }
 }
 

@@ -2,7 +2,8 @@
 //!
 //! The background of a row lies between its runs: before the first, between two, after the last. These gaps are
 //! labelled, not pixels. Row `y` with `k` runs has `k + 1` gaps, of which the first and the last may be empty; so the
-//! gaps need not be stored, their ends are those of the runs.
+//! gaps need not be stored, their ends are those of the runs. The first and the last one of a row, and all of the first
+//! and the last row, are the outside; so rows of one run or none need no work.
 
 use super::forest::Forest;
 use super::runs::RunRows;
@@ -33,37 +34,36 @@ impl Fill {
         self.connect(runs);
         self.measure(runs);
         for y in 0..runs.height() {
-            let row = Row::of(runs, y);
-            let mut x0 = None;
-            for gap in 0..row.gaps() {
-                let (start, end) = row.gap(gap);
-                if gap > 0 && !self.is_hole(row.name(gap)) {
-                    filled.push(x0.take().unwrap_or(start), start);
-                }
-                x0 = x0.or(Some(end));
-            }
+            self.fill_row(&Row::of(runs, y), filled);
             filled.end_row();
         }
     }
 
-    fn is_hole(&mut self, name: u32) -> bool {
-        let root = self.gaps.find(name);
-        root != OUTSIDE && self.areas[root as usize] <= self.limit_px
+    fn fill_row(&mut self, row: &Row, filled: &mut RunRows) {
+        let mut x0 = row.gap(0).1;
+        for gap in 1..row.gaps() {
+            let (start, end) = row.gap(gap);
+            if !self.is_hole(row.name(gap)) {
+                filled.push(x0, start);
+                x0 = end;
+            }
+        }
     }
 
-    /// Joins gaps that share a column with a gap of the row above, and those at the border with the outside.
+    fn is_hole(&mut self, name: u32) -> bool {
+        name != OUTSIDE && {
+            let root = self.gaps.find(name);
+            root != OUTSIDE && self.areas[root as usize] <= self.limit_px
+        }
+    }
+
+    /// Joins gaps that share a column with a gap of the row above.
     fn connect(&mut self, runs: &RunRows) {
-        let height = runs.height();
-        self.gaps.restart(runs.runs().len() + height + 1);
-        for y in 0..height {
-            let row = Row::of(runs, y);
-            if y == 0 || y + 1 == height {
-                (0..row.gaps()).for_each(|gap| self.gaps.join(OUTSIDE, row.name(gap)));
-            }
-            self.gaps.join(OUTSIDE, row.name(0));
-            self.gaps.join(OUTSIDE, row.name(row.gaps() - 1));
-            if y > 0 {
-                self.connect_rows(&Row::of(runs, y - 1), &row);
+        self.gaps.restart(runs.runs().len() + runs.height() + 1);
+        for y in 1..runs.height() {
+            let (above, below) = (Row::of(runs, y - 1), Row::of(runs, y));
+            if above.has_inner() || below.has_inner() {
+                self.connect_rows(&above, &below);
             }
         }
     }
@@ -89,7 +89,7 @@ impl Fill {
         self.areas.resize(runs.runs().len() + runs.height() + 1, 0);
         for y in 0..runs.height() {
             let row = Row::of(runs, y);
-            for gap in 1..row.gaps().saturating_sub(1) {
+            for gap in 1..row.gaps() - 1 {
                 let (start, end) = row.gap(gap);
                 let root = self.gaps.find(row.name(gap));
                 self.areas[root as usize] += u64::from(end - start);
@@ -102,8 +102,10 @@ impl Fill {
 struct Row<'a> {
     runs: &'a [super::scene::Run],
     width_px: u32,
-    /// The name of its first gap.
+    /// The name of its first gap, if that had one of its own.
     first: u32,
+    /// Whether it is the first row or the last.
+    is_border: bool,
 }
 
 impl<'a> Row<'a> {
@@ -114,7 +116,13 @@ impl<'a> Row<'a> {
             first: (range.start + y + 1) as u32,
             runs: &rows.runs()[range],
             width_px: rows.width_px,
+            is_border: y == 0 || y + 1 == rows.height(),
         }
+    }
+
+    /// Whether it has a gap between two runs.
+    fn has_inner(&self) -> bool {
+        self.runs.len() > 1
     }
 
     fn gaps(&self) -> usize {
@@ -122,7 +130,10 @@ impl<'a> Row<'a> {
     }
 
     fn name(&self, gap: usize) -> u32 {
-        self.first + gap as u32
+        match self.is_border || gap == 0 || gap == self.runs.len() {
+            true => OUTSIDE,
+            false => self.first + gap as u32,
+        }
     }
 
     /// Its first column and one past its last.

@@ -54,6 +54,7 @@ mod tophat;
 mod morphology;
 
 mod forest;
+mod histogram;
 mod runs;
 
 mod fill;

@@ -1,7 +1,8 @@
 //! All steps of the stage, one after the other.
 
 use super::fill::Fill;
-use super::kernels::{Counts, Level};
+use super::histogram::Histogram;
+use super::kernels::Level;
 use super::plan::{Plan, Threshold};
 use super::regions::Regions;
 use super::runs::RunRows;
@@ -17,6 +18,7 @@ pub struct Stage {
     pub(super) top_hat: TopHat,
     /// The top-hat's values, where the threshold needs all of them before it can decide (Otsu).
     values: Vec<u8>,
+    histogram: Histogram,
     /// One row of foreground.
     bits: Vec<u64>,
     /// One row of certain foreground (hysteresis).
@@ -48,6 +50,7 @@ impl Stage {
             level,
             top_hat: TopHat::new(plan, level),
             values: vec![0; if otsu { pixels } else { 0 }],
+            histogram: Histogram::new(),
             bits: vec![0; width.div_ceil(64)],
             sure: vec![0; width.div_ceil(64)],
             hysteresis: Hysteresis::new(plan),
@@ -103,17 +106,17 @@ impl Stage {
             bits,
             raw,
             values,
+            histogram,
             ..
         } = self;
         let kernels = self.level;
         let width = self.plan.width_px;
-        let mut counts: Counts = [[0; 256]; 4];
         top_hat.run(picture, |y, upper, lower| {
             let row = &mut values[y * width..][..width];
             kernels.subtract(upper, lower, row);
-            kernels.count(row, &mut counts);
+            histogram.add(row);
         });
-        let level = threshold::otsu_level(&threshold::total(&counts)).max(floor);
+        let level = threshold::otsu_level(&histogram.take()).max(floor);
         for row in values.chunks_exact(width.max(1)) {
             kernels.mark(row, level, bits);
             raw.push_row(bits);

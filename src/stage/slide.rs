@@ -37,7 +37,7 @@ impl Slide {
             span,
             width_px,
             height_px,
-            suffix: Aligned::new(op.neutral(), (span.size() + 1) * suffix_stride(width_px)),
+            suffix: Aligned::new(0, (span.size() + 1) * suffix_stride(width_px)),
             next: 0,
             blocks: match height_px {
                 0 => 0,
@@ -58,7 +58,6 @@ impl Slide {
     /// Begins a new picture.
     pub fn restart(&mut self) {
         self.next = 0;
-        self.suffix.fill(self.op.neutral());
     }
 
     /// The next step, if the `ready` first rows of the picture are enough for it.

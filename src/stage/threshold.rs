@@ -1,7 +1,6 @@
 //! Foreground is value > level: fixed, after Otsu, or with two levels.
 
 use super::forest::Forest;
-use super::kernels::Counts;
 use super::plan::{Plan, Threshold};
 use super::regions::connect;
 use super::runs::RunRows;
@@ -29,11 +28,6 @@ pub fn otsu_level(counts: &[u64; 256]) -> u8 {
         }
     }
     best.1 as u8
-}
-
-/// The four tables as one.
-pub(crate) fn total(counts: &Counts) -> [u64; 256] {
-    std::array::from_fn(|value| counts.iter().map(|table| u64::from(table[value])).sum())
 }
 
 /// Keeps runs above the lower level whose region (8-connected) has a pixel above the upper one (Canny 1986).
@@ -109,7 +103,6 @@ fn any_set(bits: &[u64], x0: u32, x1: u32) -> bool {
 #[cfg(test)]
 mod tests {
     use super::*;
-    use crate::stage::kernels::Level;
     use crate::stage::plain::{self, Grid};
     use proptest::prelude::*;
 
@@ -147,15 +140,6 @@ mod tests {
             assert_eq!(level_of(&[value; 9]), value);
         }
         assert_eq!(level_of(&[]), 0);
-    }
-
-    #[test]
-    fn the_tables_are_added() {
-        let mut counts: Counts = [[0; 256]; 4];
-        Level::SCALAR.count(&[1, 1, 1, 1, 1, 9, 255], &mut counts);
-        let total = total(&counts);
-        assert_eq!((total[1], total[9], total[255]), (5, 1, 1));
-        assert_eq!(total.iter().sum::<u64>(), 7);
     }
 
     #[test]

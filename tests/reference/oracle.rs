@@ -44,6 +44,9 @@ struct Request {
     width: Option<usize>,
     height: Option<usize>,
     stride: Option<usize>,
+    /// Bytes before the first pixel.
+    #[serde(default)]
+    offset: usize,
     #[serde(default)]
     dark: bool,
     /// `[width, height]` of a rectangle, or `[diameter]` of an octagon.
@@ -90,12 +93,13 @@ struct Picture {
     width: usize,
     height: usize,
     stride: usize,
+    offset: usize,
 }
 
 impl Picture {
     fn gray(&self) -> Gray<'_> {
         Gray {
-            pixels: &self.pixels,
+            pixels: &self.pixels[self.offset..],
             width_px: self.width,
             height_px: self.height,
             stride_px: self.stride,
@@ -118,12 +122,16 @@ impl Request {
         };
         let pixels = std::fs::read(path)?;
         let stride = self.stride.unwrap_or(width);
-        anyhow::ensure!(pixels.len() >= stride * height, "{path} is too short");
+        anyhow::ensure!(
+            pixels.len() >= self.offset + stride * height,
+            "{path} is too short"
+        );
         Ok(Picture {
             pixels,
             width,
             height,
             stride,
+            offset: self.offset,
         })
     }
 

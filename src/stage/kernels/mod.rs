@@ -123,6 +123,8 @@ struct Block {
     end: usize,
     /// Where the first yielded row goes in the job's output.
     out: usize,
+    /// Whether there is no block before it, and so no suffix.
+    is_first: bool,
     /// Whether no block comes after it, so that nobody needs its suffix.
     is_last: bool,
 }
@@ -150,14 +152,12 @@ impl Job {
                     .saturating_sub(top)
                     .min(size),
                 out: top.saturating_sub(self.span.after).saturating_sub(start),
+                is_first: index == 0,
                 is_last: top + size >= self.height_px + self.span.after,
             }
         })
     }
 }
-
-/// Gray values counted in four tables, so that equal neighbours do not wait for each other.
-pub(crate) type Counts = [[u32; 256]; 4];
 
 /// Why a level cannot be used.
 #[derive(Clone, Debug, Error, PartialEq, Eq)]
@@ -303,8 +303,8 @@ impl Level {
     /// `src` begins with row `src_top`, `dst` at the first row that comes out. With `suffix[o]` the extremum of
     /// rows `o..` of the *previous* block, row `o` of a block ends the window whose extremum is that of `suffix[o + 1]` and
     /// of rows `0..=o` of this block. Afterwards `suffix` holds that of the last block, arranged as the kernel likes, unless
-    /// it was the picture's last. At first it holds neutral values only. It has one row more than the window, for the
-    /// kernel's own use, and rows of [`suffix_stride`] bytes. Rows outside the picture are ignored.
+    /// it was the picture's last; before the picture's first block it is not read. It has one row more than the window, for
+    /// the kernel's own use, and rows of [`suffix_stride`] bytes. Rows outside the picture are ignored.
     pub(crate) fn slide(self, op: Extremum, job: Job, src: Rows, dst: RowsMut, suffix: RowsMut) {
         dispatch!(self, slide(op, job, src, dst, suffix));
     }
@@ -328,11 +328,6 @@ impl Level {
     /// [`Level::subtract`] and [`Level::mark`] in one.
     pub(crate) fn mark_difference(self, upper: &[u8], lower: &[u8], level: u8, bits: &mut [u64]) {
         dispatch!(self, mark_difference(upper, lower, level, bits));
-    }
-
-    /// Adds the pixels of `row` to the tables.
-    pub(crate) fn count(self, row: &[u8], counts: &mut Counts) {
-        scalar::count(row, counts);
     }
 }
 

@@ -1,6 +1,6 @@
 //! The definition of every kernel, in plain loops over whole rows.
 
-use super::{Block, Counts, Extremum, Job, Rows, RowsMut};
+use super::{Block, Extremum, Job, Rows, RowsMut};
 
 /// See [`super::Level::slide`].
 pub(super) fn slide(op: Extremum, job: Job, src: Rows, mut dst: RowsMut, mut suffix: RowsMut) {
@@ -25,7 +25,7 @@ fn yield_rows(op: Extremum, block: Block, src: Rows, mut dst: RowsMut, suffix: &
         if o >= block.skip {
             let out = dst.row(o - block.skip, width);
             out.copy_from_slice(prefix);
-            if o + 1 < block.size {
+            if o + 1 < block.size && !block.is_first {
                 join(op, out, &suffix[(o + 1) * stride..][..width]);
             }
         }
@@ -102,21 +102,6 @@ pub(super) fn mark_difference(upper: &[u8], lower: &[u8], level: u8, bits: &mut 
         for (i, (&u, &l)) in upper.iter().zip(lower).enumerate() {
             *word |= u64::from(u.saturating_sub(l) > level) << i;
         }
-    }
-}
-
-/// See [`super::Level::count`].
-pub(super) fn count(row: &[u8], counts: &mut Counts) {
-    let [a, b, c, d] = counts;
-    let (quads, rest) = row.as_chunks::<4>();
-    for quad in quads {
-        a[quad[0] as usize] += 1;
-        b[quad[1] as usize] += 1;
-        c[quad[2] as usize] += 1;
-        d[quad[3] as usize] += 1;
-    }
-    for &p in rest {
-        a[p as usize] += 1;
     }
 }
 

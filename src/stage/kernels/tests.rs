@@ -1,7 +1,7 @@
 //! What every kernel has to do, stamped into each kernel's file: all widths from 0 to twice the widest tile and one more,
 //! starts that are not aligned, rows further apart than they are wide, and bytes around the output that must not change.
 
-use super::{Block, Counts, Extremum, Job, Level, Rows, RowsMut, suffix_stride};
+use super::{Block, Extremum, Job, Level, Rows, RowsMut, suffix_stride};
 use crate::stage::element::Span;
 
 /// The widest tile of any level, in bytes.
@@ -44,11 +44,6 @@ macro_rules! stamp {
         #[test]
         fn mark() {
             shared::on($name, shared::mark);
-        }
-
-        #[test]
-        fn count() {
-            shared::on($name, shared::count);
         }
     };
 }
@@ -179,8 +174,9 @@ fn whole(width_px: usize, height_px: usize, span: Span) -> Job {
     }
 }
 
-fn suffix(op: Extremum, width: usize, span: Span) -> Vec<u8> {
-    vec![op.neutral(); (span.size() + 1) * suffix_stride(width)]
+/// A suffix buffer; what it holds at first does not matter.
+fn suffix(width: usize, span: Span) -> Vec<u8> {
+    vec![MARK; (span.size() + 1) * suffix_stride(width)]
 }
 
 /// The extremum over a window by its definition.
@@ -209,7 +205,7 @@ pub(super) fn slide(level: Level) {
             let source = Source::new(width, height, 7 * width + i);
             for op in [Extremum::Least, Extremum::Greatest] {
                 let mut target = Target::new(width, height, 3 * width + i);
-                let mut suffix = suffix(op, width, span);
+                let mut suffix = suffix(width, span);
                 let suffix = RowsMut {
                     pixels: &mut suffix,
                     stride_px: suffix_stride(width),
@@ -247,7 +243,7 @@ pub(super) fn slide_in_steps(level: Level) {
         ] {
             let source = Source::new(width, height, width);
             let mut target = Target::new(width, height, width);
-            let mut suffix = suffix(op, width, span);
+            let mut suffix = suffix(width, span);
             let all = whole(width, height, span);
             for first in (0..all.count).step_by(2) {
                 let job = Job {
@@ -331,19 +327,6 @@ fn check_bits(bits: &[u64], width: usize, expected: impl Fn(usize) -> bool) {
     for x in 0..bits.len() * 64 {
         let set = bits[x / 64] >> (x % 64) & 1 == 1;
         assert_eq!(set, x < width && expected(x), "bit {x} of {width}");
-    }
-}
-
-pub(super) fn count(level: Level) {
-    for width in 0..=WIDEST {
-        let source = Source::new(width, 1, width);
-        let row = source.rows().row(0, width);
-        let mut counts: Counts = [[0; 256]; 4];
-        level.count(row, &mut counts);
-        for value in 0..=255 {
-            let total: u32 = counts.iter().map(|table| table[value as usize]).sum();
-            assert_eq!(total as usize, row.iter().filter(|&&p| p == value).count());
-        }
     }
 }
 

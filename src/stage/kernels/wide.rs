@@ -147,32 +147,31 @@ macro_rules! slide {
             mut dst: ViewMut<WIDTH>,
             suffix: &[[u8; WIDTH]],
         ) {
-            let Block {
-                size, skip, end, ..
-            } = *block;
-            let (inside, joined) = (block.rows_in, end.min(size - 1));
+            let Block { skip, end, .. } = *block;
+            let inside = block.rows_in;
+            // The last row of a block ends a window that lies in this block alone, as do all in the first block.
+            let joined = match block.is_first {
+                true => skip,
+                false => end.min(block.size - 1),
+            };
             let mut prefix = neutral::<MAX>();
             for o in 0..skip.min(inside) {
                 prefix = join::<MAX, WIDTH>(&prefix, src.row(o));
             }
             for o in skip..joined.min(inside) {
                 prefix = join::<MAX, WIDTH>(&prefix, src.row(o));
-                put(
-                    dst.row(o - skip),
-                    &join::<MAX, WIDTH>(&prefix, &suffix[o + 1]),
-                );
+                let both = join::<MAX, WIDTH>(&prefix, &suffix[o + 1]);
+                put(dst.row(o - skip), &both);
             }
             for o in skip.max(inside)..joined {
-                put(
-                    dst.row(o - skip),
-                    &join::<MAX, WIDTH>(&prefix, &suffix[o + 1]),
-                );
+                let both = join::<MAX, WIDTH>(&prefix, &suffix[o + 1]);
+                put(dst.row(o - skip), &both);
             }
-            if end == size {
-                if inside == size {
-                    prefix = join::<MAX, WIDTH>(&prefix, src.row(size - 1));
+            for o in joined..end {
+                if o < inside {
+                    prefix = join::<MAX, WIDTH>(&prefix, src.row(o));
                 }
-                put(dst.row(size - 1 - skip), &prefix);
+                put(dst.row(o - skip), &prefix);
             }
         }
     };
