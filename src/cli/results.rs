@@ -13,7 +13,7 @@ use crate::frames::Frame;
 use crate::recording::{Label, Recording};
 use crate::reject::line::{LineCounts, LineFault, Signal, SignalWriter};
 use crate::reject::{Loss, Why};
-use crate::replay::{Match, Outcome, Row, Score, parts_csv, rows, score, summarize};
+use crate::replay::{Match, Outcome, Placed, Row, Score, parts_csv, rows, score, summarize};
 use crate::settings::{Policy, Settings};
 use crate::shape::Verdict;
 
@@ -93,16 +93,13 @@ impl Results<'_> {
     }
 
     pub(super) fn score(&self, labels: &[Label]) -> Score {
-        let parts = self.parts();
+        let parts = self.outcome.parts.iter();
+        let parts: Vec<Placed> = parts.map(|(part, _)| Placed::from(part)).collect();
         score(
             labels,
             &parts,
             self.settings().belt.part_pitch_mm * LABEL_GATE,
         )
-    }
-
-    fn parts(&self) -> Vec<Part> {
-        self.outcome.parts.iter().map(|(part, _)| *part).collect()
     }
 
     pub(super) fn print_table(

@@ -1,8 +1,32 @@
 //! Verdicts against labels, matched by belt position.
 
-use crate::belt::Part;
+use crate::belt::{Extent, Part};
 use crate::recording::Label;
 use crate::shape::Verdict;
+
+/// What matters of a part when it is held against labels.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Placed {
+    /// Everything that was ever seen of it.
+    pub extent: Extent,
+    /// Centroid along the belt.
+    pub along_mm: f64,
+    /// Centroid across the belt.
+    pub across_mm: f64,
+    /// What becomes of it.
+    pub verdict: Verdict,
+}
+
+impl From<&Part> for Placed {
+    fn from(part: &Part) -> Self {
+        Self {
+            extent: part.extent,
+            along_mm: part.along_mm,
+            across_mm: part.across_mm,
+            verdict: part.verdict,
+        }
+    }
+}
 
 /// A label and the part it belongs to, or one without the other.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -45,7 +69,7 @@ impl Score {
 ///
 /// A label belongs to the part nearest to it, at most `gate_mm` outside its box; each part takes one label so, and what
 /// is left over goes to parts that already have one (a pair that has grown together carries two labels).
-pub fn score(labels: &[Label], parts: &[Part], gate_mm: f64) -> Score {
+pub fn score(labels: &[Label], parts: &[Placed], gate_mm: f64) -> Score {
     let (of_label, labelled) = pair_up(labels, parts, gate_mm);
     let mut score = Score::default();
     for (l, label) in labels.iter().enumerate() {
@@ -75,14 +99,14 @@ pub fn score(labels: &[Label], parts: &[Part], gate_mm: f64) -> Score {
     score
 }
 
-fn along_mm(found: &Match, labels: &[Label], parts: &[Part]) -> f64 {
+fn along_mm(found: &Match, labels: &[Label], parts: &[Placed]) -> f64 {
     let label = found.label.map(|l| labels[l].along_mm);
     label
         .or(found.part.map(|p| parts[p].along_mm))
         .unwrap_or(f64::INFINITY)
 }
 
-fn pair_up(labels: &[Label], parts: &[Part], gate_mm: f64) -> (Vec<Option<usize>>, Vec<bool>) {
+fn pair_up(labels: &[Label], parts: &[Placed], gate_mm: f64) -> (Vec<Option<usize>>, Vec<bool>) {
     let mut pairs = candidates(labels, parts, gate_mm);
     pairs.sort_by(|a, b| a.0.total_cmp(&b.0).then((a.1, a.2).cmp(&(b.1, b.2))));
     let mut of_label = vec![None; labels.len()];
@@ -100,7 +124,7 @@ fn pair_up(labels: &[Label], parts: &[Part], gate_mm: f64) -> (Vec<Option<usize>
 
 /// Pairs that are near enough, with the distance of label and centroid. Both lists are in belt order but for a few
 /// places, so only a window of parts is looked at for each label.
-fn candidates(labels: &[Label], parts: &[Part], gate_mm: f64) -> Vec<(f64, usize, usize)> {
+fn candidates(labels: &[Label], parts: &[Placed], gate_mm: f64) -> Vec<(f64, usize, usize)> {
     let mut order: Vec<usize> = (0..parts.len()).collect();
     order.sort_by(|&a, &b| parts[a].extent.lead_mm.total_cmp(&parts[b].extent.lead_mm));
     let longest_mm = parts
