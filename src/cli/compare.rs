@@ -7,10 +7,10 @@ use anyhow::ensure;
 
 use super::Outcome as Ending;
 use super::files::write_whole;
-use super::results::LABEL_GATE;
 use super::sorting::{progress, sort};
 use super::station::{Station, frame_size};
 use crate::recording::Recording;
+use crate::replay::LABEL_GATE;
 use crate::replay::report::picture::Album;
 use crate::replay::report::words::mm;
 use crate::tuning::{Change, Comparison, Sides, changes_csv, compare, page_of_changes, said};

@@ -13,12 +13,9 @@ use crate::frames::Frame;
 use crate::recording::{Label, Recording};
 use crate::reject::line::{LineCounts, LineFault, Signal, SignalWriter};
 use crate::reject::{Loss, Why};
-use crate::replay::{Match, Outcome, Placed, Row, Score, parts_csv, rows, score, summarize};
+use crate::replay::{LABEL_GATE, Match, Outcome, Placed, Row, Score, parts_csv, rows, score, summarize};
 use crate::settings::{Policy, Settings};
 use crate::shape::Verdict;
-
-/// A label may lie this share of the part pitch outside the box of its part.
-pub(super) const LABEL_GATE: f64 = 0.25;
 
 /// A finished replay.
 pub(super) struct Results<'a> {

@@ -4,6 +4,9 @@ use crate::belt::{Extent, Part};
 use crate::recording::Label;
 use crate::shape::Verdict;
 
+/// A label may lie this share of the part pitch outside the box of its part.
+pub const LABEL_GATE: f64 = 0.25;
+
 /// What matters of a part when it is held against labels.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub struct Placed {

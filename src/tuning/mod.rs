@@ -2,8 +2,18 @@
 
 mod change;
 mod change_page;
+mod edit;
+mod layers;
 mod pairs;
+mod shift;
+mod trial;
+mod vary;
 
 pub use change::{Change, Comparison, Seen, changes_csv, compare};
 pub use change_page::{Sides, page_of_changes, said};
+pub use edit::{KeyError, move_shapes, set};
+pub use layers::{Recipe, Stand};
 pub use pairs::{Pair, pair_parts};
+pub use shift::Shift;
+pub use trial::{Bench, Tried, sorts, try_all};
+pub use vary::{Axis, BadAxis, Choice, grid_size, points};
