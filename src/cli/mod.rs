@@ -22,6 +22,7 @@ mod report;
 mod results;
 mod sorting;
 mod station;
+mod sweep;
 mod teach;
 
 use std::io::{self, Write};
@@ -47,6 +48,7 @@ enum Command {
     Teach(teach::Args),
     Judge(judge::Args),
     Compare(compare::Args),
+    Sweep(sweep::Args),
     Draw(draw::Args),
 }
 
@@ -79,6 +81,7 @@ impl Cli {
             Command::Teach(args) => args.run(&mut out),
             Command::Judge(args) => args.run(&mut out),
             Command::Compare(args) => args.run(&mut out),
+            Command::Sweep(args) => args.run(&mut out),
             Command::Draw(args) => args.run(),
         };
         let flushed = out.flush();

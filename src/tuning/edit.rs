@@ -66,6 +66,36 @@ pub fn set(document: &mut DocumentMut, key: &str, typed: &str) -> Result<(), Key
     Ok(())
 }
 
+/// What stands at `key`, as it is typed; `-` if nothing does.
+pub fn value_at(document: &DocumentMut, key: &str) -> String {
+    let mut item: Option<&Item> = Some(document.as_item());
+    let steps = steps(key);
+    for (k, step) in steps.iter().enumerate() {
+        let index = step.parse::<usize>();
+        if let (Ok(index), Some(Value::Array(array)), true) =
+            (&index, item.and_then(Item::as_value), k + 1 == steps.len())
+        {
+            return array.get(*index).map_or_else(|| "-".to_owned(), typed);
+        }
+        item = match index {
+            Ok(index) => item.and_then(|item| item.get(index)),
+            Err(_) => item.and_then(|item| item.get(step.as_str())),
+        };
+    }
+    item.and_then(Item::as_value).map_or_else(|| "-".to_owned(), typed)
+}
+
+fn typed(value: &Value) -> String {
+    match value {
+        Value::String(text) => text.value().clone(),
+        other => {
+            let mut plain = other.clone();
+            plain.decor_mut().clear();
+            plain.to_string()
+        }
+    }
+}
+
 fn set_in_array(
     array: &mut toml_edit::Array,
     last: &str,
@@ -193,6 +223,20 @@ area_mm2 = [500.0, 900.0] # both ends
         }
         let added = with("shape[0].branch_above_mm", "5").unwrap();
         assert!(added.contains("branch_above_mm = 5\n"), "{added}");
+    }
+
+    #[test]
+    fn what_stands_there_can_be_read() {
+        let document: DocumentMut = TEXT.parse().unwrap();
+        for (key, typed) in [
+            ("picture.element_mm", "45.0"),
+            ("picture.threshold.method", "otsu"),
+            ("shape[0].area_mm2[1]", "900.0"),
+            ("shape[1].area_mm2[1]", "-"),
+            ("picture.none", "-"),
+        ] {
+            assert_eq!(value_at(&document, key), typed, "{key}");
+        }
     }
 
     #[test]

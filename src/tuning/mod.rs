@@ -3,17 +3,23 @@
 mod change;
 mod change_page;
 mod edit;
+mod journal;
 mod layers;
 mod pairs;
 mod shift;
+mod sweep;
+mod sweep_page;
 mod trial;
 mod vary;
 
 pub use change::{Change, Comparison, Seen, changes_csv, compare};
 pub use change_page::{Sides, page_of_changes, said};
-pub use edit::{KeyError, move_shapes, set};
+pub use edit::{KeyError, move_shapes, set, value_at};
+pub use journal::{Finished, Journal, JournalError};
 pub use layers::{Recipe, Stand};
 pub use pairs::{Pair, pair_parts};
 pub use shift::Shift;
+pub use sweep::{Costs, Point, Standing, SweepError, candidates, ranked, run, standings, stretches};
+pub use sweep_page::{SweepPage, points_csv};
 pub use trial::{Bench, Tried, sorts, try_all};
 pub use vary::{Axis, BadAxis, Choice, grid_size, points};

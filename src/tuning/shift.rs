@@ -37,6 +37,15 @@ impl Shift {
         }
     }
 
+    /// What it is called in a journal: unlike the name it tells by how much.
+    pub fn key(self) -> String {
+        match self {
+            Self::Light(by) => format!("light {by}"),
+            Self::Size(by) => format!("size {by}"),
+            Self::Blur => "blur".to_owned(),
+        }
+    }
+
     /// Changes `frame`; `before` is a buffer.
     pub fn apply(self, frame: &mut Frame, before: &mut Vec<u8>) {
         match self {
