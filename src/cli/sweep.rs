@@ -49,6 +49,9 @@ pub(super) struct Args {
     /// Judge the best ones also on the recording brightened, dimmed, enlarged and shrunk by this much, and blurred
     #[arg(long, value_name = "PERCENT", value_parser = clap::value_parser!(u8).range(1..=50))]
     shift: Option<u8>,
+    /// Try every setting to the end, also when it is all but certain (99.9 %) that more than a fifth of the parts goes wrong
+    #[arg(long)]
+    to_the_end: bool,
     /// A missed bad part costs as much as this many false alarms
     #[arg(long, value_name = "N", default_value_t = 100, value_parser = clap::value_parser!(u32).range(1..))]
     miss_costs: u32,
@@ -108,6 +111,7 @@ impl Args {
             labels: &labels,
             level: station.level,
             workers: self.workers.map_or_else(processors, usize::from),
+            gives_up: !self.to_the_end,
             stop: stop_flag()?,
         };
         let ran = self.run_points(&bench, &points, &mut journal);
@@ -243,7 +247,7 @@ impl Args {
             let source = SourceFile::read(&file).with_context(|| format!("cannot read {}", file.display()))?;
             digest.update(source.sha256);
         }
-        digest.update(format!("{:?} {:?} {}", self.vary, self.random, self.seed));
+        digest.update(format!("{:?} {:?} {} {}", self.vary, self.random, self.seed, self.to_the_end));
         Ok(digest.finalize().iter().map(|byte| format!("{byte:02x}")).collect())
     }
 
@@ -289,7 +293,8 @@ impl Args {
         let order = ranked(standings, costs);
         let Some(&chosen) = order.first() else {
             let why = points.iter().find_map(|point| point.stand.as_ref().err());
-            anyhow::bail!("no point could be run: {}", why.map_or("", String::as_str));
+            let why = why.map_or("every one gets too many parts wrong; --to-the-end tries them all the same", String::as_str);
+            anyhow::bail!("no setting is worth a table: {why}");
         };
         let page = SweepPage {
             recording: self.recording.display().to_string(),

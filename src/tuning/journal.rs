@@ -183,6 +183,7 @@ mod tests {
                 not_found: 0,
                 stray: 0,
                 room_percent: 12.34,
+                given_up_after: (point == 1).then_some(40),
             },
         }
     }

@@ -221,8 +221,8 @@ impl Surveyor {
         }
     }
 
-    /// Looks at a frame of the size that the settings state.
-    pub fn survey(&mut self, frame: &Frame) -> Surveyed {
+    /// Looks at a frame of the size that the settings state, for those surveys that are wanted.
+    pub fn survey(&mut self, frame: &Frame, wanted: &[bool]) -> Surveyed {
         let recipe = self.recipe.clone();
         let mut surveyed = Surveyed {
             captured_us: frame.captured_us,
@@ -230,20 +230,30 @@ impl Surveyor {
             surveys: vec![(Vec::new(), 0); recipe.surveys.len()],
         };
         for (k, Hat { window, plan }) in recipe.hats.iter().enumerate() {
+            let of_hat = |survey: &Survey| recipe.splits[survey.split].hat == k;
+            if !recipe.surveys.iter().zip(wanted).any(|(survey, &wanted)| wanted && of_hat(survey)) {
+                continue;
+            }
             self.hat.resize(plan.width_px * plan.height_px, 0);
             self.hats[k].picture(frame.gray().window(*window), &mut self.hat);
             let otsu = self.otsu.of(&self.hat);
-            self.split_all(&recipe, k, otsu, &mut surveyed.surveys);
+            self.split_all(&recipe, (k, otsu), wanted, &mut surveyed.surveys);
         }
         surveyed
     }
 
     /// All regions of one top-hat with their figures. Surveys whose splits come out the same stand together.
-    fn split_all(&mut self, recipe: &Recipe, hat: usize, otsu: u8, out: &mut [(Vec<Sight>, u32)]) {
+    fn split_all(
+        &mut self,
+        recipe: &Recipe,
+        (hat, otsu): (usize, u8),
+        wanted: &[bool],
+        out: &mut [(Vec<Sight>, u32)],
+    ) {
         let mut together: Vec<(Plan, Vec<usize>)> = Vec::new();
         for (s, survey) in recipe.surveys.iter().enumerate() {
             let split = &recipe.splits[survey.split];
-            if split.hat != hat {
+            if split.hat != hat || !wanted[s] {
                 continue;
             }
             let plan = Plan {

@@ -129,8 +129,11 @@ pub struct Costs {
 }
 
 impl Costs {
-    /// What a result costs, in false alarms.
+    /// What a result costs, in false alarms; infinite if it was given up.
     pub fn of(self, tried: &Tried) -> f64 {
+        if !tried.is_whole() {
+            return f64::INFINITY;
+        }
         self.miss * tried.misses as f64 + tried.false_alarms() as f64
     }
 }
@@ -152,8 +155,9 @@ pub fn standings(points: &[Point], axes: &[Axis], journal: &Journal, shifts: &[S
     let tried: Vec<Option<Tried>> = (0..points.len())
         .map(|point| journal.find(point, None).copied().filter(|_| points[point].stand.is_ok()))
         .collect();
-    let plateaus = plateaus(points, axes, &tried, costs);
-    let front = front(&tried);
+    let whole: Vec<Option<Tried>> = tried.iter().map(|tried| tried.filter(Tried::is_whole)).collect();
+    let plateaus = plateaus(points, axes, &whole, costs);
+    let front = front(&whole);
     let standing = |point: usize| {
         let shifted = shifts.iter();
         let shifted = shifted
@@ -170,9 +174,10 @@ pub fn standings(points: &[Point], axes: &[Axis], journal: &Journal, shifts: &[S
     (0..points.len()).filter_map(standing).collect()
 }
 
-/// The best first: least cost, then the one that stays best on the changed recordings, then the widest plateau.
+/// Those that were tried to the end, the best first: least cost, then the one that stays best on the changed recordings, then the widest plateau.
 pub fn ranked(standings: &[Standing], costs: Costs) -> Vec<&Standing> {
-    let mut order: Vec<&Standing> = standings.iter().collect();
+    let whole = standings.iter().filter(|standing| standing.tried.is_whole());
+    let mut order: Vec<&Standing> = whole.collect();
     order.sort_by(|a, b| {
         let judged = |s: &Standing| s.shifted.is_empty();
         costs
@@ -256,7 +261,7 @@ pub fn stretches(points: &[Point], axes: &[Axis], standings: &[Standing], chosen
         let mut at = place.clone();
         at[axis] = value;
         let same = |s: &&Standing| points[s.point].place.as_ref() == Some(&at);
-        standings.iter().find(same).is_some_and(|s| costs.of(&s.tried) <= cost)
+        standings.iter().find(same).is_some_and(|s| s.tried.is_whole() && costs.of(&s.tried) <= cost)
     };
     let stretch = |axis: usize| {
         let here = place[axis];
@@ -283,6 +288,7 @@ mod tests {
             not_found: 0,
             stray: 0,
             room_percent: 1.0,
+            given_up_after: None,
         }
     }
 

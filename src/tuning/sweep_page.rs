@@ -76,7 +76,9 @@ impl SweepPage<'_> {
             let _ = writeln!(text, "  {name:<15} {what}");
         };
         let invalid = self.invalid().len();
-        line("tried", format!("{} settings, {invalid} more contradict themselves", self.standings.len()));
+        let given_up = self.standings.iter().filter(|standing| !standing.tried.is_whole()).count();
+        let tried = self.standings.len();
+        line("tried", format!("{tried} settings, {given_up} of them given up early; {invalid} more contradict themselves"));
         match self.present() {
             Some(present) => line("as they are", self.counts(present)),
             None => line("as they are", "not valid".to_owned()),
@@ -106,6 +108,9 @@ impl SweepPage<'_> {
                 let _ = write!(text, ", {count} {what}");
             }
         }
+        if let Some(labels) = tried.given_up_after {
+            let _ = write!(text, ", given up after {labels} labels");
+        }
         text
     }
 
@@ -123,6 +128,7 @@ impl SweepPage<'_> {
             p.soft { code { (self.settings) } " varied on " code { (self.recording) } ", " (counted(self.labels, "label", "labels")) }
             ul.key {
                 li { b { (self.standings.len()) } "settings tried" }
+                li { b { (self.standings.iter().filter(|standing| !standing.tried.is_whole()).count()) } "given up early" }
                 li { b { (self.chosen.tried.misses) } "of " (self.chosen.tried.bad) " bad missed" }
                 li { b { (self.chosen.tried.false_rejects) } "of " (self.chosen.tried.good) " good rejected" }
             }
@@ -213,7 +219,8 @@ impl SweepPage<'_> {
             let tried = &standing.tried;
             (percent(tried.false_alarms(), tried.good), percent(tried.misses, tried.bad))
         };
-        let most = self.standings.iter().map(at).fold((1.0, 1.0), |most: (f64, f64), at| {
+        let whole = || self.standings.iter().filter(|standing| standing.tried.is_whole());
+        let most = whole().map(at).fold((1.0, 1.0), |most: (f64, f64), at| {
             (most.0.max(at.0), most.1.max(at.1))
         });
         let plot = Plot::new(640.0, 360.0, (0.0, most.0.min(100.0)), (0.0, most.1));
@@ -224,7 +231,7 @@ impl SweepPage<'_> {
         let mut front = self.front();
         front.sort_by(|a, b| at(a).0.total_cmp(&at(b).0));
         let line: Vec<_> = front.iter().map(|s| place(s)).map(|(x, y)| format!("{} {}", n(x), n(y))).collect();
-        let mut dots: Vec<(f64, f64)> = self.standings.iter().map(place).collect();
+        let mut dots: Vec<(f64, f64)> = whole().map(place).collect();
         dots.sort_by(|a, b| a.0.total_cmp(&b.0).then(a.1.total_cmp(&b.1)));
         dots.dedup();
         let chosen = place(self.chosen);
@@ -246,7 +253,7 @@ impl SweepPage<'_> {
     /// What the best setting with each value of a key comes to.
     fn keys(&self) -> Markup {
         let best = |k: usize, value: &str| {
-            let with = self.standings.iter().filter(|s| s.point > 0 && self.points[s.point].values[k] == value);
+            let with = self.standings.iter().filter(|s| s.point > 0 && s.tried.is_whole() && self.points[s.point].values[k] == value);
             with.min_by(|a, b| self.costs.of(&a.tried).total_cmp(&self.costs.of(&b.tried)))
         };
         let row = |k: usize, value: &String| {
@@ -290,7 +297,7 @@ pub fn points_csv(page: &SweepPage<'_>) -> Result<Vec<u8>, csv::Error> {
     let mut csv = csv::Writer::from_writer(Vec::new());
     let mut head: Vec<&str> = vec!["point"];
     head.extend(page.axes.iter().map(|axis| axis.key.as_str()));
-    head.extend(["misses", "bad", "false_rejects", "good", "not_found", "stray", "room_percent", "cost"]);
+    head.extend(["misses", "bad", "false_rejects", "good", "not_found", "stray", "room_percent", "given_up_after", "cost"]);
     head.extend(["worst_shifted_cost", "trade_off", "chosen", "problem"]);
     csv.write_record(&head)?;
     for (k, point) in page.points.iter().enumerate() {
@@ -304,7 +311,7 @@ pub fn points_csv(page: &SweepPage<'_>) -> Result<Vec<u8>, csv::Error> {
     csv.into_inner().map_err(|error| csv::Error::from(error.into_error()))
 }
 
-fn figures(page: &SweepPage<'_>, standing: Option<&Standing>) -> [String; 11] {
+fn figures(page: &SweepPage<'_>, standing: Option<&Standing>) -> [String; 12] {
     let Some(standing) = standing else {
         return Default::default();
     };
@@ -319,6 +326,7 @@ fn figures(page: &SweepPage<'_>, standing: Option<&Standing>) -> [String; 11] {
         tried.not_found.to_string(),
         tried.stray.to_string(),
         tried.room_percent.to_string(),
+        tried.given_up_after.map(|labels| labels.to_string()).unwrap_or_default(),
         page.costs.of(tried).to_string(),
         worst.unwrap_or_default(),
         yes(standing.on_front),

@@ -17,10 +17,15 @@ use crate::replay::{LABEL_GATE, Placed, score};
 use crate::shape::{Reason, Verdict};
 use crate::sorter::{Event, Sorter};
 use crate::stage::Level;
+use crate::stats::{Count, Share};
 use crate::units::Micros;
 
-/// Frames that are looked at before their parts are merged, for each worker.
-const BLOCK: usize = 12;
+/// Frames that are looked at before their parts are merged. What is given up must not depend on the number of workers.
+const BLOCK: usize = 16;
+/// A setting is given up when more than this share of the parts goes wrong,
+const HOPELESS: f64 = 0.2;
+/// and that is as sure as this.
+const HOPELESS_SURE: Share = Share::P999;
 
 /// What the verdicts of one setting are worth.
 #[derive(Clone, Copy, Debug, PartialEq, Serialize, Deserialize)]
@@ -39,9 +44,17 @@ pub struct Tried {
     pub stray: usize,
     /// By which share all limits could move without another verdict on a part that is right now, in percent; at most 100.
     pub room_percent: f64,
+    /// After how many labels it was given up, if it was; the counts are those up to there.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub given_up_after: Option<usize>,
 }
 
 impl Tried {
+    /// Whether it was tried to the end.
+    pub fn is_whole(&self) -> bool {
+        self.given_up_after.is_none()
+    }
+
     /// Shots and losses that are not misses.
     pub fn false_alarms(&self) -> usize {
         self.false_rejects + self.not_found + self.stray
@@ -58,6 +71,8 @@ pub struct Bench<'a> {
     pub level: Level,
     /// Threads.
     pub workers: usize,
+    /// Whether settings are given up once it is all but certain that more than a fifth of the parts goes wrong.
+    pub gives_up: bool,
     /// Ends a pass early.
     pub stop: &'static AtomicBool,
 }
@@ -69,9 +84,11 @@ struct Trial {
     sorter: Sorter,
     latency_us: Micros,
     gate_mm: f64,
+    decision_mm: f64,
     look: Look,
     parts: Vec<Placed>,
     severity: Vec<f64>,
+    given_up: Option<Tried>,
 }
 
 impl Trial {
@@ -83,9 +100,11 @@ impl Trial {
             sorter: Sorter::of(settings)?,
             latency_us: settings.latency_us(),
             gate_mm: settings.belt.part_pitch_mm * LABEL_GATE,
+            decision_mm: settings.decision_mm() + settings.belt.part_pitch_mm,
             look: Look::default(),
             parts: Vec::new(),
             severity: Vec::new(),
+            given_up: None,
         })
     }
 
@@ -112,8 +131,32 @@ impl Trial {
     }
 
     fn finish(mut self, labels: &[Label]) -> Tried {
+        if let Some(given_up) = self.given_up {
+            return given_up;
+        }
         self.sorter.end_of_belt();
         self.happen(Micros::MAX);
+        self.tally(labels)
+    }
+
+    /// Gives up if what was decided so far leaves no hope. Labels count once all parts near them are decided.
+    fn consider(&mut self, now: Micros, labels: &[Label]) {
+        let until_mm = self.sorter.motion().position_mm(now) - self.decision_mm;
+        let known = labels.iter().filter(|label| label.along_mm < until_mm);
+        let known: Vec<Label> = known.cloned().collect();
+        let mut tried = self.tally(&known);
+        // Parts beyond the last label that counts have none yet.
+        tried.stray = 0;
+        let wrong = tried.misses + tried.false_rejects + tried.not_found;
+        let wrong = Count::new(wrong as u64, known.len() as u64);
+        if !known.is_empty() && wrong.at_least(HOPELESS_SURE) > HOPELESS {
+            tried.given_up_after = Some(known.len());
+            tried.room_percent = 0.0;
+            self.given_up = Some(tried);
+        }
+    }
+
+    fn tally(&self, labels: &[Label]) -> Tried {
         let score = score(labels, &self.parts, self.gate_mm);
         let bad = labels.iter().filter(|label| label.verdict == Verdict::Reject).count();
         let stray = score.unlabelled.iter().filter_map(|found| found.part);
@@ -131,6 +174,7 @@ impl Trial {
             not_found: score.not_found.len(),
             stray: stray.filter(|&part| self.parts[part].verdict == Verdict::Reject).count(),
             room_percent: (least * 1e4).round() / 100.0,
+            given_up_after: None,
         }
     }
 }
@@ -156,13 +200,17 @@ pub fn try_all(
     let surveyor = |_| Surveyor::new(recipe.clone(), bench.level);
     let mut surveyors: Vec<_> = (0..bench.workers).map(surveyor).collect();
     let frames = bench.recording.len();
-    for start in (0..frames).step_by(BLOCK * bench.workers) {
+    for start in (0..frames).step_by(BLOCK) {
         if bench.stop.load(Ordering::Relaxed) {
             return Ok(None);
         }
-        let block = start..(start + BLOCK * bench.workers).min(frames);
-        let surveyed = survey(bench.recording, &mut surveyors, block.clone(), shift)?;
-        merge(&mut trials, &surveyed, bench.workers);
+        let block = start..(start + BLOCK).min(frames);
+        let mut wanted = vec![false; recipe.surveys()];
+        for trial in trials.iter().filter(|trial| trial.given_up.is_none()) {
+            wanted[trial.survey] = true;
+        }
+        let surveyed = survey(bench.recording, &mut surveyors, block.clone(), shift, &wanted)?;
+        merge(&mut trials, &surveyed, bench);
         done(block.len());
     }
     Ok(Some(finish(trials, bench)))
@@ -182,13 +230,14 @@ fn survey(
     surveyors: &mut [Surveyor],
     block: Range<usize>,
     shift: Option<Shift>,
+    wanted: &[bool],
 ) -> Result<Vec<Surveyed>, RecordingError> {
     let workers = surveyors.len();
     let mut all = vec![Surveyed::default(); block.len()];
     let lanes = thread::scope(|scope| {
         let spawn = |(w, surveyor): (usize, _)| {
             let mine = (block.start + w..block.end).step_by(workers);
-            scope.spawn(move || lane(recording, surveyor, mine, shift))
+            scope.spawn(move || lane(recording, surveyor, mine, shift, wanted))
         };
         let handles: Vec<_> = surveyors.iter_mut().enumerate().map(spawn).collect();
         let joined = handles.into_iter().map(|handle| handle.join().expect("a worker does not panic"));
@@ -207,26 +256,34 @@ fn lane(
     surveyor: &mut Surveyor,
     frames: impl Iterator<Item = usize>,
     shift: Option<Shift>,
+    wanted: &[bool],
 ) -> Result<Vec<Surveyed>, RecordingError> {
+    if !wanted.contains(&true) {
+        return Ok(frames.map(|_| Surveyed::default()).collect());
+    }
     let (mut frame, mut buffer) = (Frame::default(), Vec::new());
     let look = |k| {
         recording.read_into(k, &mut frame)?;
         if let Some(shift) = shift {
             shift.apply(&mut frame, &mut buffer);
         }
-        Ok(surveyor.survey(&frame))
+        Ok(surveyor.survey(&frame, wanted))
     };
     frames.map(look).collect()
 }
 
 /// Each setting by itself takes the frames of a block.
-fn merge(trials: &mut [Trial], surveyed: &[Surveyed], workers: usize) {
-    let share = trials.len().div_ceil(workers).max(1);
+fn merge(trials: &mut [Trial], surveyed: &[Surveyed], bench: &Bench<'_>) {
+    let share = trials.len().div_ceil(bench.workers).max(1);
+    let now = surveyed.last().map_or(Micros::ZERO, |frame| frame.captured_us);
     thread::scope(|scope| {
         for trials in trials.chunks_mut(share) {
             scope.spawn(move || {
-                for trial in trials {
+                for trial in trials.iter_mut().filter(|trial| trial.given_up.is_none()) {
                     surveyed.iter().for_each(|frame| trial.take(frame));
+                    if bench.gives_up {
+                        trial.consider(now, bench.labels);
+                    }
                 }
             });
         }
