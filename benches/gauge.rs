@@ -109,7 +109,10 @@ fn judging(c: &mut Criterion) {
         let parts = parts(inside, broken);
         let mut next = parts.iter().cycle();
         group.bench_function(name, |b| {
-            b.iter(|| next.next().map(|(region, runs)| black_box(judge.judge(region, runs))));
+            b.iter(|| {
+                next.next()
+                    .map(|(region, runs)| black_box(judge.judge(region, runs)))
+            });
         });
     }
     group.finish();
@@ -120,8 +123,12 @@ fn gauging(c: &mut Criterion) {
     let t = masks(gasket);
     let mut a = t.clone();
     (60..110).for_each(|y| (15..45).for_each(|x| a.remove(x, y)));
-    c.bench_function("gauge_masks_large_bite", |b| b.iter(|| black_box(gauge_masks(&t, &a))));
-    c.bench_function("model_of_a_silhouette", |b| b.iter(|| black_box(Model::new(taught(gasket)))));
+    c.bench_function("gauge_masks_large_bite", |b| {
+        b.iter(|| black_box(gauge_masks(&t, &a)))
+    });
+    c.bench_function("model_of_a_silhouette", |b| {
+        b.iter(|| black_box(Model::new(taught(gasket))))
+    });
 }
 
 criterion_group!(benches, judging, gauging);

@@ -45,7 +45,10 @@ pub(super) struct Args {
 }
 
 fn margin(text: &str) -> Result<f64, String> {
-    let mm = text.parse().ok().filter(|mm: &f64| mm.is_finite() && *mm >= 0.0);
+    let mm = text
+        .parse()
+        .ok()
+        .filter(|mm: &f64| mm.is_finite() && *mm >= 0.0);
     mm.ok_or_else(|| "expected millimetres, 0 or more".to_owned())
 }
 
@@ -77,7 +80,10 @@ impl Args {
             write_whole(file, &changes_csv(&comparison)?)?;
         }
         if let Some(file) = &self.report {
-            write_whole(file, self.page(&comparison, &recording, [&a, &b])?.as_bytes())?;
+            write_whole(
+                file,
+                self.page(&comparison, &recording, [&a, &b])?.as_bytes(),
+            )?;
         }
         self.print(&comparison, out)?;
         Ok(if self.expect_same && !comparison.same() {
@@ -97,7 +103,10 @@ impl Args {
             names: [&self.settings, &self.against].map(|file| file.display().to_string()),
             albums: stations.map(|station| Album::new(recording, station.artist())),
         };
-        let name = self.recording.file_name().unwrap_or(self.recording.as_os_str());
+        let name = self
+            .recording
+            .file_name()
+            .unwrap_or(self.recording.as_os_str());
         let name = name.to_string_lossy();
         Ok(page_of_changes(&name, comparison, self.margin, &mut sides)?)
     }
@@ -112,12 +121,20 @@ impl Args {
                 writeln!(out, "same, {left_mm} mm from a flip: {}", line(change))?;
             }
             let near = comparison.near.len();
-            writeln!(out, "  {:<15} {near} within {margin_mm} mm of another verdict", "near")?;
+            writeln!(
+                out,
+                "  {:<15} {near} within {margin_mm} mm of another verdict",
+                "near"
+            )?;
         }
         let (differ, parts) = (comparison.differing.len(), comparison.parts);
         writeln!(out, "  {:<15} {differ} of {parts} parts", "different")?;
         let [a_mm, b_mm] = comparison.unseen_mm;
-        writeln!(out, "  {:<15} {a_mm:.1} mm with A, {b_mm:.1} mm with B", "unseen belt")?;
+        writeln!(
+            out,
+            "  {:<15} {a_mm:.1} mm with A, {b_mm:.1} mm with B",
+            "unseen belt"
+        )?;
         Ok(())
     }
 }

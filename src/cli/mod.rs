@@ -17,6 +17,8 @@ mod draw;
 mod files;
 mod interrupt;
 mod judge;
+mod mark;
+mod propose;
 mod replay;
 mod report;
 mod results;
@@ -47,6 +49,7 @@ enum Command {
     Check(check::Args),
     Teach(teach::Args),
     Judge(judge::Args),
+    Mark(mark::Args),
     Compare(compare::Args),
     Sweep(sweep::Args),
     Draw(draw::Args),
@@ -80,6 +83,7 @@ impl Cli {
             Command::Check(args) => args.run(&mut out),
             Command::Teach(args) => args.run(&mut out),
             Command::Judge(args) => args.run(&mut out),
+            Command::Mark(args) => args.run(&mut out),
             Command::Compare(args) => args.run(&mut out),
             Command::Sweep(args) => args.run(&mut out),
             Command::Draw(args) => args.run(),

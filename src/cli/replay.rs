@@ -98,12 +98,19 @@ impl Args {
             outcome: &outcome,
             signals: &signals,
         };
-        let score = labels.as_deref().map(|labels| (labels, results.score(labels)));
+        let score = labels
+            .as_deref()
+            .map(|labels| (labels, results.score(labels)));
         if let Some(file) = &self.report {
             let labels = score.as_ref().map(|(labels, score)| (*labels, score));
             report::write(file, &results, &sources, labels, &took)?;
         }
-        self.tell(&results, score.filter(|_| self.check_labels), &mut *line, out)
+        self.tell(
+            &results,
+            score.filter(|_| self.check_labels),
+            &mut *line,
+            out,
+        )
     }
 
     /// Writes the tables and pictures that were asked for, then tells what came of it.

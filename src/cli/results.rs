@@ -13,7 +13,9 @@ use crate::frames::Frame;
 use crate::recording::{Label, Recording};
 use crate::reject::line::{LineCounts, LineFault, Signal, SignalWriter};
 use crate::reject::{Loss, Why};
-use crate::replay::{LABEL_GATE, Match, Outcome, Placed, Row, Score, parts_csv, rows, score, summarize};
+use crate::replay::{
+    LABEL_GATE, Match, Outcome, Placed, Row, Score, parts_csv, rows, score, summarize,
+};
 use crate::settings::{Policy, Settings};
 use crate::shape::Verdict;
 

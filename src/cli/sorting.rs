@@ -29,7 +29,14 @@ pub(super) fn sort(
         outcome.note(event);
         anyhow::Ok(())
     };
-    replay::run(recording, inspectors, &mut sorter, &pace, || bar.inc(1), each)?;
+    replay::run(
+        recording,
+        inspectors,
+        &mut sorter,
+        &pace,
+        || bar.inc(1),
+        each,
+    )?;
     ensure!(
         !stop.load(Ordering::Relaxed),
         "stopped by hand; nothing was written"

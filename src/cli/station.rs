@@ -87,7 +87,10 @@ struct Sizes {
 
 impl Shelf {
     /// The shapes that the settings name, at the picture's scale.
-    pub(super) fn taught(&mut self, loaded: &Loaded) -> Result<Vec<Arc<Silhouette>>, SettingsError> {
+    pub(super) fn taught(
+        &mut self,
+        loaded: &Loaded,
+    ) -> Result<Vec<Arc<Silhouette>>, SettingsError> {
         let mut silhouettes = Vec::new();
         let mut problems = Vec::new();
         for shape in 0..loaded.settings.shapes.len() {

@@ -17,8 +17,9 @@ use crate::recording::{Label, Recording, SizePx};
 use crate::replay::report::SourceFile;
 use crate::settings;
 use crate::tuning::{
-    Axis, Bench, Choice, Costs, Journal, Point, Shift, Stand, Standing, SweepError, SweepPage, candidates,
-    grid_size, move_shapes, points, points_csv, ranked, run, set, sorts, standings, stretches, value_at,
+    Axis, Bench, Choice, Costs, Journal, Point, Shift, Stand, Standing, SweepError, SweepPage,
+    candidates, grid_size, move_shapes, points, points_csv, ranked, run, set, sorts, standings,
+    stretches, value_at,
 };
 
 /// Tries many settings on a labelled recording
@@ -59,7 +60,12 @@ pub(super) struct Args {
     #[arg(long, value_name = "FILE")]
     journal: Option<PathBuf>,
     /// Do only part I of N
-    #[arg(long, value_name = "I/N", requires = "journal", conflicts_with = "join")]
+    #[arg(
+        long,
+        value_name = "I/N",
+        requires = "journal",
+        conflicts_with = "join"
+    )]
     part: Option<Share>,
     /// Use the journals of all parts
     #[arg(long, value_name = "JOURNALS", num_args = 1..)]
@@ -121,12 +127,16 @@ impl Args {
                     "stopped by hand; {} holds what is finished: the same command goes on from there",
                     file.display()
                 ),
-                None => "stopped by hand; nothing was kept (--journal FILE keeps what is finished)".to_owned(),
+                None => "stopped by hand; nothing was kept (--journal FILE keeps what is finished)"
+                    .to_owned(),
             });
         }
         let standings = ran?;
         if let Some(Share { part, of }) = self.part {
-            writeln!(out, "part {part} of {of} is finished; join the journals of all parts with --join")?;
+            writeln!(
+                out,
+                "part {part} of {of} is finished; join the journals of all parts with --join"
+            )?;
             return Ok(Ending::Done);
         }
         self.tell(&text, &points, &standings, &labels, out)
@@ -139,16 +149,19 @@ impl Args {
     }
 
     fn shifts(&self) -> Vec<Shift> {
-        self.shift.map_or_else(Vec::new, |percent| Shift::all(f64::from(percent)).to_vec())
+        self.shift
+            .map_or_else(Vec::new, |percent| Shift::all(f64::from(percent)).to_vec())
     }
 
     fn labels(&self, recording: &Recording) -> anyhow::Result<Vec<Label>> {
         let folder = self.recording.display();
         let labels = recording.labels()?;
-        let labels = labels.with_context(|| {
-            format!("{folder}: no labels.csv to judge by; `mark` proposes one")
-        })?;
-        ensure!(!labels.is_empty(), "{folder}: labels.csv has no labels to judge by");
+        let labels = labels
+            .with_context(|| format!("{folder}: no labels.csv to judge by; `mark` proposes one"))?;
+        ensure!(
+            !labels.is_empty(),
+            "{folder}: labels.csv has no labels to judge by"
+        );
         Ok(labels)
     }
 
@@ -180,7 +193,11 @@ impl Args {
             stand: self.stand(text, size, &mut shelf),
         }];
         for place in points(&self.vary, choice) {
-            let values: Vec<String> = place.iter().zip(&self.vary).map(|(&k, axis)| axis.values[k].clone()).collect();
+            let values: Vec<String> = place
+                .iter()
+                .zip(&self.vary)
+                .map(|(&k, axis)| axis.values[k].clone())
+                .collect();
             let stand = match self.edited(&document, &values) {
                 Ok(edited) => self.stand(&edited.to_string(), size, &mut shelf),
                 Err(error) => Err(error.to_string()),
@@ -206,7 +223,8 @@ impl Args {
     fn stand(&self, text: &str, size: SizePx, shelf: &mut Shelf) -> Result<Stand, String> {
         let one_line = |error: settings::SettingsError| match error {
             settings::SettingsError::Bad(problems) => {
-                let line = |problem: &settings::Problem| format!("{}: {}", problem.key, problem.message);
+                let line =
+                    |problem: &settings::Problem| format!("{}: {}", problem.key, problem.message);
                 problems.0.iter().map(line).collect::<Vec<_>>().join("; ")
             }
             other => other.to_string(),
@@ -215,7 +233,9 @@ impl Args {
         let taught = shelf.taught(&loaded).map_err(one_line)?;
         let wanted = frame_size(&loaded.settings);
         if wanted != size {
-            return Err(format!("camera.width_px, camera.height_px: {wanted}; the frames are {size} px"));
+            return Err(format!(
+                "camera.width_px, camera.height_px: {wanted}; the frames are {size} px"
+            ));
         }
         let stand = Stand {
             settings: loaded.settings,
@@ -239,43 +259,73 @@ impl Args {
 
     /// Stands for everything that decides what comes out of a run.
     fn name(&self, station: &Station) -> anyhow::Result<String> {
-        let shapes = (0..station.settings().shapes.len()).map(|shape| station.loaded.shape_path(shape));
+        let shapes =
+            (0..station.settings().shapes.len()).map(|shape| station.loaded.shape_path(shape));
         let tables = ["frames.csv", "labels.csv"].map(|name| self.recording.join(name));
         let mut digest = Sha256::new();
         digest.update(env!("CARGO_PKG_VERSION"));
-        for file in tables.into_iter().chain([self.settings.clone()]).chain(shapes) {
-            let source = SourceFile::read(&file).with_context(|| format!("cannot read {}", file.display()))?;
+        for file in tables
+            .into_iter()
+            .chain([self.settings.clone()])
+            .chain(shapes)
+        {
+            let source = SourceFile::read(&file)
+                .with_context(|| format!("cannot read {}", file.display()))?;
             digest.update(source.sha256);
         }
-        digest.update(format!("{:?} {:?} {} {}", self.vary, self.random, self.seed, self.to_the_end));
-        Ok(digest.finalize().iter().map(|byte| format!("{byte:02x}")).collect())
+        digest.update(format!(
+            "{:?} {:?} {} {}",
+            self.vary, self.random, self.seed, self.to_the_end
+        ));
+        Ok(digest
+            .finalize()
+            .iter()
+            .map(|byte| format!("{byte:02x}"))
+            .collect())
     }
 
     /// Runs what is not in the journal yet.
-    fn run_points(&self, bench: &Bench<'_>, points: &[Point], journal: &mut Journal) -> Result<Vec<Standing>, SweepError> {
+    fn run_points(
+        &self,
+        bench: &Bench<'_>,
+        points: &[Point],
+        journal: &mut Journal,
+    ) -> Result<Vec<Standing>, SweepError> {
         let mine = |k: &usize| match self.part {
             // Stretches of points that stand together, so that each part shares as much as it can.
             Some(Share { part, of }) => k * of / points.len() == part - 1,
             None => true,
         };
-        let wanted: Vec<usize> = (0..points.len()).filter(mine).filter(|&k| points[k].stand.is_ok()).collect();
+        let wanted: Vec<usize> = (0..points.len())
+            .filter(mine)
+            .filter(|&k| points[k].stand.is_ok())
+            .collect();
         let frames = bench.recording.len();
         let bar = progress(frames * wanted.len(), "frames of all settings");
-        let known = wanted.iter().filter(|&&k| journal.find(k, None).is_some()).count();
+        let known = wanted
+            .iter()
+            .filter(|&&k| journal.find(k, None).is_some())
+            .count();
         bar.inc((frames * known) as u64);
         bar.reset_eta();
         run(bench, points, &wanted, None, journal, |done| bar.inc(done))?;
         bar.finish_and_clear();
         let shifts = self.shifts();
-        let standings = |journal: &Journal| standings(points, &self.vary, journal, &shifts, self.costs());
+        let standings =
+            |journal: &Journal| standings(points, &self.vary, journal, &shifts, self.costs());
         let first = standings(journal);
         if self.part.is_some() || shifts.is_empty() {
             return Ok(first);
         }
         let best = candidates(&first, self.costs());
-        let bar = progress(frames * best.len() * shifts.len(), "frames of the best settings, light and scale shifted");
+        let bar = progress(
+            frames * best.len() * shifts.len(),
+            "frames of the best settings, light and scale shifted",
+        );
         for &shift in &shifts {
-            run(bench, points, &best, Some(shift), journal, |done| bar.inc(done))?;
+            run(bench, points, &best, Some(shift), journal, |done| {
+                bar.inc(done)
+            })?;
         }
         bar.finish_and_clear();
         Ok(standings(journal))
@@ -293,7 +343,10 @@ impl Args {
         let order = ranked(standings, costs);
         let Some(&chosen) = order.first() else {
             let why = points.iter().find_map(|point| point.stand.as_ref().err());
-            let why = why.map_or("every one gets too many parts wrong; --to-the-end tries them all the same", String::as_str);
+            let why = why.map_or(
+                "every one gets too many parts wrong; --to-the-end tries them all the same",
+                String::as_str,
+            );
             anyhow::bail!("no setting is worth a table: {why}");
         };
         let page = SweepPage {
@@ -314,7 +367,11 @@ impl Args {
             write_whole(file, page.html().as_bytes())?;
         }
         if let Some(file) = &self.write {
-            write_whole(file, self.chosen_text(text, &points[chosen.point], file)?.as_bytes())?;
+            write_whole(
+                file,
+                self.chosen_text(text, &points[chosen.point], file)?
+                    .as_bytes(),
+            )?;
         }
         write!(out, "{}", page.text())?;
         if let Some(file) = &self.write {

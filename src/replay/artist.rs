@@ -130,9 +130,7 @@ impl Place {
             let across_mm = geometry.below_top_mm(region.centroid_y + 0.5);
             (along_mm - self.at.0).hypot(across_mm - self.at.1)
         };
-        regions
-            .iter()
-            .min_by(|a, b| apart(a).total_cmp(&apart(b)))
+        regions.iter().min_by(|a, b| apart(a).total_cmp(&apart(b)))
     }
 }
 

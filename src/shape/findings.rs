@@ -19,7 +19,12 @@ pub struct Finding {
 /// Checks the settings against every shape; `shapes` and all sizes are at the picture's scale of `mm_per_px`.
 ///
 /// Takes some milliseconds per shape.
-pub fn findings(plan: &Plan, common: &Common, shapes: &[(Model, Limits)], mm_per_px: f64) -> Vec<Finding> {
+pub fn findings(
+    plan: &Plan,
+    common: &Common,
+    shapes: &[(Model, Limits)],
+    mm_per_px: f64,
+) -> Vec<Finding> {
     let mut found = Vec::new();
     for (shape, (model, limits)) in shapes.iter().enumerate() {
         let mut check = Check {
@@ -104,13 +109,18 @@ impl Check<'_> {
         if let Some(&bore) = bores.first().filter(|&&bore| bore <= set) {
             self.report(
                 "fill_below_mm2",
-                format!("{set:.2} mm2, but the shape has a bore of {bore:.2} mm2, which would be closed"),
+                format!(
+                    "{set:.2} mm2, but the shape has a bore of {bore:.2} mm2, which would be closed"
+                ),
             );
         }
         // It need not fit in at every angle, but it must at one.
         let narrow = self.measures().map_or(0.0, |taught| taught.width_px);
         if narrow > plan.height_px as f64 || narrow > plan.width_px as f64 {
-            let (width, height) = (self.mm(plan.width_px as f64), self.mm(plan.height_px as f64));
+            let (width, height) = (
+                self.mm(plan.width_px as f64),
+                self.mm(plan.height_px as f64),
+            );
             let narrow = self.mm(narrow);
             self.report(
                 "region_mm",
@@ -132,10 +142,17 @@ impl Check<'_> {
             );
         }
         // A half round bite or burr just over the limit must not be ignored.
-        for (key, limit) in [("missing_mm", missing), ("excess_mm", self.limits.excess_px)] {
+        for (key, limit) in [
+            ("missing_mm", missing),
+            ("excess_mm", self.limits.excess_px),
+        ] {
             let half_round = 0.5 * std::f64::consts::PI * limit * limit;
             if limit > 0.0 && common.flaw_below_px > half_round {
-                let (set, area, limit) = (self.mm2(common.flaw_below_px), self.mm2(half_round), self.mm(limit));
+                let (set, area, limit) = (
+                    self.mm2(common.flaw_below_px),
+                    self.mm2(half_round),
+                    self.mm(limit),
+                );
                 self.report(
                     "flaw_below_mm2",
                     format!(
@@ -157,12 +174,42 @@ impl Check<'_> {
         let mm = |range: [f64; 2]| range.map(|px| self.mm(px));
         let whole = |range: [u32; 2]| range.map(f64::from);
         let asked = [
-            ("area_mm2", limits.area_px.map(mm2), self.mm2(taught.area_px as f64), " mm2"),
-            ("length_mm", limits.length_px.map(mm), self.mm(taught.length_px), " mm"),
-            ("width_mm", limits.width_px.map(mm), self.mm(taught.width_px), " mm"),
-            ("holes", limits.holes.map(whole), f64::from(taught.holes), ""),
-            ("boundary_mm", limits.boundary_px.map(mm), self.mm(taught.boundary_px as f64), " mm"),
-            ("branches", limits.branches.map(whole), f64::from(taught.branches), ""),
+            (
+                "area_mm2",
+                limits.area_px.map(mm2),
+                self.mm2(taught.area_px as f64),
+                " mm2",
+            ),
+            (
+                "length_mm",
+                limits.length_px.map(mm),
+                self.mm(taught.length_px),
+                " mm",
+            ),
+            (
+                "width_mm",
+                limits.width_px.map(mm),
+                self.mm(taught.width_px),
+                " mm",
+            ),
+            (
+                "holes",
+                limits.holes.map(whole),
+                f64::from(taught.holes),
+                "",
+            ),
+            (
+                "boundary_mm",
+                limits.boundary_px.map(mm),
+                self.mm(taught.boundary_px as f64),
+                " mm",
+            ),
+            (
+                "branches",
+                limits.branches.map(whole),
+                f64::from(taught.branches),
+                "",
+            ),
         ];
         for (key, range, value, unit) in asked {
             let Some([low, high]) = range else { continue };
@@ -225,7 +272,9 @@ mod tests {
         change(&mut plan, &mut common, &mut limits);
         let model = Model::new(silhouette(&Outline::gasket(60.0), 0.25).0);
         let found = findings(&plan, &common, &[(model, limits)], 0.25);
-        found.iter().for_each(|finding| println!("{}: {}", finding.key, finding.problem));
+        found
+            .iter()
+            .for_each(|finding| println!("{}: {}", finding.key, finding.problem));
         found.iter().map(|finding| finding.key).collect()
     }
 
@@ -241,17 +290,47 @@ mod tests {
             height_px: side,
         };
         assert_eq!(keys(|plan, _, _| plan.element = square(20)), ["element_mm"]);
-        assert_eq!(keys(|plan, _, _| plan.element = Element::Octagon { diameter_px: 21 }), ["element_mm"]);
-        assert_eq!(keys(|plan, _, _| plan.fill_below_px = 5000), ["fill_below_mm2"]);
-        assert_eq!(keys(|plan, _, _| plan.speck_below_px = 50_000), ["speck_below_mm2"]);
+        assert_eq!(
+            keys(|plan, _, _| plan.element = Element::Octagon { diameter_px: 21 }),
+            ["element_mm"]
+        );
+        assert_eq!(
+            keys(|plan, _, _| plan.fill_below_px = 5000),
+            ["fill_below_mm2"]
+        );
+        assert_eq!(
+            keys(|plan, _, _| plan.speck_below_px = 50_000),
+            ["speck_below_mm2"]
+        );
         assert_eq!(keys(|plan, _, _| plan.height_px = 100), ["region_mm"]);
-        assert_eq!(keys(|_, common, _| common.flaw_below_px = 60.0), ["flaw_below_mm2"; 2]);
-        assert_eq!(keys(|_, _, limits| limits.missing_px = 30.0), ["missing_mm"]);
-        assert_eq!(keys(|_, _, limits| limits.area_px = Some([0.0, 900.0])), ["area_mm2"]);
-        assert_eq!(keys(|_, _, limits| limits.length_px = Some([0.0, 90.0])), ["length_mm"]);
-        assert_eq!(keys(|_, _, limits| limits.width_px = Some([0.0, 90.0])), ["width_mm"]);
+        assert_eq!(
+            keys(|_, common, _| common.flaw_below_px = 60.0),
+            ["flaw_below_mm2"; 2]
+        );
+        assert_eq!(
+            keys(|_, _, limits| limits.missing_px = 30.0),
+            ["missing_mm"]
+        );
+        assert_eq!(
+            keys(|_, _, limits| limits.area_px = Some([0.0, 900.0])),
+            ["area_mm2"]
+        );
+        assert_eq!(
+            keys(|_, _, limits| limits.length_px = Some([0.0, 90.0])),
+            ["length_mm"]
+        );
+        assert_eq!(
+            keys(|_, _, limits| limits.width_px = Some([0.0, 90.0])),
+            ["width_mm"]
+        );
         assert_eq!(keys(|_, _, limits| limits.holes = Some([0, 0])), ["holes"]);
-        assert_eq!(keys(|_, _, limits| limits.boundary_px = Some([0.0, 9.0])), ["boundary_mm"]);
-        assert_eq!(keys(|_, _, limits| limits.branches = Some([5, 9])), ["branches"]);
+        assert_eq!(
+            keys(|_, _, limits| limits.boundary_px = Some([0.0, 9.0])),
+            ["boundary_mm"]
+        );
+        assert_eq!(
+            keys(|_, _, limits| limits.branches = Some([5, 9])),
+            ["branches"]
+        );
     }
 }

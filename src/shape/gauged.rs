@@ -53,8 +53,12 @@ impl Asked {
             length_px: feret.map(|(length, _)| length),
             width_px: feret.map(|(_, width)| width),
             holes: self.holes.then(|| measurer.holes(region, runs)),
-            boundary_px: self.boundary.then(|| measurer.boundary(region, runs) as f64),
-            branches: self.branches.then(|| measurer.branches(region, runs, branch_above_px)),
+            boundary_px: self
+                .boundary
+                .then(|| measurer.boundary(region, runs) as f64),
+            branches: self
+                .branches
+                .then(|| measurer.branches(region, runs, branch_above_px)),
         }
     }
 }

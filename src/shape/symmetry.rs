@@ -110,7 +110,9 @@ impl<'a> Same<'a> {
     fn anywhere_mirrored(&mut self, turns: u32) -> bool {
         let span = 360.0 / f64::from(turns);
         // Two pixels at the rim, then half a pixel.
-        let coarse = (2.0 / self.model.radius_px.max(1.0)).to_degrees().clamp(0.2, 9.0);
+        let coarse = (2.0 / self.model.radius_px.max(1.0))
+            .to_degrees()
+            .clamp(0.2, 9.0);
         let best = self.best_mirrored(0.0, coarse, (span / coarse).ceil() as u32);
         let best = self.best_mirrored(best - coarse, coarse / 4.0, 9);
         self.at(self.mirrored(best))

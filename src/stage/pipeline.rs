@@ -148,8 +148,8 @@ impl Stage {
 #[cfg(test)]
 mod tests {
     use super::*;
-    use crate::stage::plain::{self, Grid};
     use crate::stage::again::{Again, OtsuLevels};
+    use crate::stage::plain::{self, Grid};
     use crate::stage::plan::{Element, Polarity};
     use proptest::prelude::*;
 

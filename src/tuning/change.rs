@@ -27,7 +27,7 @@ pub struct Seen {
 }
 
 impl Seen {
-    fn new(part: &Part, outlet: Option<usize>, settings: &Settings) -> Self {
+    pub(super) fn new(part: &Part, outlet: Option<usize>, settings: &Settings) -> Self {
         let shape = part.judged.map(|judged| &settings.shapes[judged.shape]);
         let mm = |px: f64| settings.scale().mm(px);
         Self {
@@ -75,13 +75,19 @@ impl Change {
             ("reasons", a.part.reasons != b.part.reasons),
             ("outlet", a.outlet != b.outlet),
         ];
-        differ.into_iter().filter(|(_, differ)| *differ).map(|(what, _)| what).collect()
+        differ
+            .into_iter()
+            .filter(|(_, differ)| *differ)
+            .map(|(what, _)| what)
+            .collect()
     }
 
     /// The nearer of the two distances to a flip.
     pub fn flips_after_mm(&self) -> Option<f64> {
         let sides = [&self.a, &self.b].into_iter().flatten();
-        sides.filter_map(|seen| seen.flips_after_mm).min_by(f64::total_cmp)
+        sides
+            .filter_map(|seen| seen.flips_after_mm)
+            .min_by(f64::total_cmp)
     }
 
     /// The part as the first settings see it, or the second.
@@ -118,7 +124,13 @@ pub fn compare(
     gate_mm: f64,
     margin_mm: Option<f64>,
 ) -> Comparison {
-    let parts = |outcome: &Outcome| outcome.parts.iter().map(|(part, _)| *part).collect::<Vec<_>>();
+    let parts = |outcome: &Outcome| {
+        outcome
+            .parts
+            .iter()
+            .map(|(part, _)| *part)
+            .collect::<Vec<_>>()
+    };
     let seen = |(outcome, settings): (&Outcome, &Settings), k: usize| {
         let (part, outlet) = &outcome.parts[k];
         Seen::new(part, *outlet, settings)
@@ -133,7 +145,9 @@ pub fn compare(
         changes.partition(|change| !change.differs().is_empty());
     let within = |change: &Change| {
         let mm = change.flips_after_mm();
-        margin_mm.zip(mm).is_some_and(|(margin_mm, mm)| mm <= margin_mm)
+        margin_mm
+            .zip(mm)
+            .is_some_and(|(margin_mm, mm)| mm <= margin_mm)
     };
     let mut near: Vec<_> = same.into_iter().filter(within).collect();
     near.sort_by(|x, y| {
@@ -149,7 +163,10 @@ pub fn compare(
 }
 
 fn unseen_mm(outcome: &Outcome) -> f64 {
-    let lengths = outcome.unseen.iter().map(|(stretch, _)| stretch.to_mm - stretch.from_mm);
+    let lengths = outcome
+        .unseen
+        .iter()
+        .map(|(stretch, _)| stretch.to_mm - stretch.from_mm);
     lengths.fold(0.0, |sum, mm| sum + mm)
 }
 
@@ -221,11 +238,14 @@ const HEADER: [&str; 14] = [
 /// # Errors
 /// Those of the CSV writer.
 pub fn changes_csv(comparison: &Comparison) -> Result<Vec<u8>, csv::Error> {
-    let mut csv = csv::WriterBuilder::new().has_headers(false).from_writer(Vec::new());
+    let mut csv = csv::WriterBuilder::new()
+        .has_headers(false)
+        .from_writer(Vec::new());
     csv.write_record(HEADER)?;
     let changes = comparison.differing.iter().chain(&comparison.near);
     for line in changes.filter_map(Line::of) {
         csv.serialize(line)?;
     }
-    csv.into_inner().map_err(|error| csv::Error::from(error.into_error()))
+    csv.into_inner()
+        .map_err(|error| csv::Error::from(error.into_error()))
 }

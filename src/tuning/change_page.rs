@@ -53,7 +53,11 @@ pub fn page_of_changes(
             },
         });
     }
-    Ok(page(&format!("Two settings on {recording}"), &lead, &sections))
+    Ok(page(
+        &format!("Two settings on {recording}"),
+        &lead,
+        &sections,
+    ))
 }
 
 fn lead(comparison: &Comparison, names: &[String; 2]) -> Markup {
@@ -69,7 +73,17 @@ fn lead(comparison: &Comparison, names: &[String; 2]) -> Markup {
 }
 
 fn list(changes: &[Change]) -> Markup {
-    let head = ["along mm", "across mm", "A", "B", "missing A", "missing B", "excess A", "excess B", "flips after mm"];
+    let head = [
+        "along mm",
+        "across mm",
+        "A",
+        "B",
+        "missing A",
+        "missing B",
+        "excess A",
+        "excess B",
+        "flips after mm",
+    ];
     let rows: Vec<_> = changes.iter().filter_map(row).collect();
     html! {
         @if rows.is_empty() { p { "Nothing." } } @else { (table(&head, &[0, 1, 4, 5, 6, 7, 8], &rows)) }

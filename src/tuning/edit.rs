@@ -9,7 +9,9 @@ use toml_edit::{DocumentMut, Formatted, Item, Value};
 #[derive(Clone, Debug, Error, PartialEq)]
 pub enum KeyError {
     /// Nothing stands there that could hold it.
-    #[error("{key}: {at} has no {step} in the settings file; expected a key such as picture.element_mm or shape[0].missing_mm")]
+    #[error(
+        "{key}: {at} has no {step} in the settings file; expected a key such as picture.element_mm or shape[0].missing_mm"
+    )]
     NoSuch {
         /// The whole key.
         key: String,
@@ -38,8 +40,10 @@ pub fn set(document: &mut DocumentMut, key: &str, typed: &str) -> Result<(), Key
     for (k, step) in way.iter().enumerate() {
         // A list of values ends the way: `area_mm2[1]`.
         if k + 1 == way.len()
-            && let (Ok(_), Some(Value::Array(array))) =
-                (last.parse::<usize>(), item.get_mut(step).and_then(Item::as_value_mut))
+            && let (Ok(_), Some(Value::Array(array))) = (
+                last.parse::<usize>(),
+                item.get_mut(step).and_then(Item::as_value_mut),
+            )
         {
             return set_in_array(array, last, typed, key);
         }
@@ -82,7 +86,8 @@ pub fn value_at(document: &DocumentMut, key: &str) -> String {
             Err(_) => item.and_then(|item| item.get(step.as_str())),
         };
     }
-    item.and_then(Item::as_value).map_or_else(|| "-".to_owned(), typed)
+    item.and_then(Item::as_value)
+        .map_or_else(|| "-".to_owned(), typed)
 }
 
 fn typed(value: &Value) -> String {
@@ -119,7 +124,9 @@ fn no_such(key: &str, at: &str, step: &str) -> KeyError {
 
 fn steps(key: &str) -> Vec<String> {
     let steps = key.split(['.', '[']);
-    steps.map(|step| step.trim_end_matches(']').to_owned()).collect()
+    steps
+        .map(|step| step.trim_end_matches(']').to_owned())
+        .collect()
 }
 
 /// A new value with the old one's comments and spaces around it.
@@ -146,7 +153,10 @@ fn value(typed: &str, before: Option<&Value>) -> Value {
 
 /// Lets the taught shapes, whose paths start at the folder `from`, be found from the folder `to`.
 pub fn move_shapes(document: &mut DocumentMut, from: &Path, to: &Path) {
-    let Some(shapes) = document.get_mut("shape").and_then(Item::as_array_of_tables_mut) else {
+    let Some(shapes) = document
+        .get_mut("shape")
+        .and_then(Item::as_array_of_tables_mut)
+    else {
         return;
     };
     for shape in shapes.iter_mut() {
@@ -154,7 +164,9 @@ pub fn move_shapes(document: &mut DocumentMut, from: &Path, to: &Path) {
             && let Some(file) = old.as_str()
             && Path::new(file).is_relative()
         {
-            let moved = relative(&from.join(file), to).to_string_lossy().into_owned();
+            let moved = relative(&from.join(file), to)
+                .to_string_lossy()
+                .into_owned();
             replace(old, &moved);
         }
     }
@@ -213,10 +225,30 @@ area_mm2 = [500.0, 900.0] # both ends
     #[test]
     fn only_the_value_changes() {
         for (key, typed, from, to) in [
-            ("picture.element_mm", "40", "element_mm = 45.0 # wide", "element_mm = 40.0 # wide"),
-            ("picture.threshold.floor", "25", "floor = 30 }", "floor = 25 }"),
-            ("shape[0].missing_mm", "1.75", "missing_mm = 2.0", "missing_mm = 1.75"),
-            ("shape[0].area_mm2[1]", "800.5", "[500.0, 900.0] #", "[500.0, 800.5] #"),
+            (
+                "picture.element_mm",
+                "40",
+                "element_mm = 45.0 # wide",
+                "element_mm = 40.0 # wide",
+            ),
+            (
+                "picture.threshold.floor",
+                "25",
+                "floor = 30 }",
+                "floor = 25 }",
+            ),
+            (
+                "shape[0].missing_mm",
+                "1.75",
+                "missing_mm = 2.0",
+                "missing_mm = 1.75",
+            ),
+            (
+                "shape[0].area_mm2[1]",
+                "800.5",
+                "[500.0, 900.0] #",
+                "[500.0, 800.5] #",
+            ),
             ("picture.threshold.method", "fixed", "\"otsu\"", "\"fixed\""),
         ] {
             assert_eq!(with(key, typed).unwrap(), TEXT.replace(from, to), "{key}");
@@ -241,8 +273,17 @@ area_mm2 = [500.0, 900.0] # both ends
 
     #[test]
     fn keys_without_a_place_are_told() {
-        for key in ["picturee.element_mm", "shape[3].missing_mm", "picture.element_mm.x", "", "shape[0].area_mm2[7]"] {
-            assert!(matches!(with(key, "1"), Err(KeyError::NoSuch { .. })), "{key}");
+        for key in [
+            "picturee.element_mm",
+            "shape[3].missing_mm",
+            "picture.element_mm.x",
+            "",
+            "shape[0].area_mm2[7]",
+        ] {
+            assert!(
+                matches!(with(key, "1"), Err(KeyError::NoSuch { .. })),
+                "{key}"
+            );
         }
         assert!(matches!(with("picture", "1"), Err(KeyError::Table { .. })));
     }
@@ -251,6 +292,11 @@ area_mm2 = [500.0, 900.0] # both ends
     fn shapes_are_found_from_another_folder() {
         let mut document: DocumentMut = TEXT.parse().unwrap();
         move_shapes(&mut document, Path::new("a/config"), Path::new("b"));
-        assert!(document.to_string().contains("file = \"../a/shapes/star.toml\""), "{document}");
+        assert!(
+            document
+                .to_string()
+                .contains("file = \"../a/shapes/star.toml\""),
+            "{document}"
+        );
     }
 }

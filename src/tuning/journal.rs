@@ -74,7 +74,13 @@ impl Journal {
             source,
         };
         let mut options = OpenOptions::new();
-        let mut opened = options.read(true).write(true).create(true).truncate(false).open(file).map_err(io)?;
+        let mut opened = options
+            .read(true)
+            .write(true)
+            .create(true)
+            .truncate(false)
+            .open(file)
+            .map_err(io)?;
         let mut bytes = Vec::new();
         opened.read_to_end(&mut bytes).map_err(io)?;
         let mut journal = Self::default();
@@ -114,7 +120,11 @@ impl Journal {
             };
             if line.last() != Some(&b'\n') {
                 // Torn. Of a first line nothing can be told, unless it is no journal at all.
-                return if k > 0 || line.starts_with(b"{") { Ok(whole) } else { Err(bad()) };
+                return if k > 0 || line.starts_with(b"{") {
+                    Ok(whole)
+                } else {
+                    Err(bad())
+                };
             }
             if k == 0 {
                 let head: Head = serde_json::from_slice(line).map_err(|_| bad())?;
@@ -151,7 +161,10 @@ impl Journal {
                 source,
             })?;
         }
-        self.runs.extend(runs.into_iter().map(|run| ((run.point, run.shift), run.tried)));
+        self.runs.extend(
+            runs.into_iter()
+                .map(|run| ((run.point, run.shift), run.tried)),
+        );
         Ok(())
     }
 
@@ -211,10 +224,23 @@ mod tests {
     fn another_sweep_and_other_files_are_refused() {
         let folder = tempfile::tempdir().unwrap();
         let file = folder.path().join("j");
-        Journal::open(&file, "abc").unwrap().add(vec![run(0)]).unwrap();
-        assert!(matches!(Journal::open(&file, "xyz"), Err(JournalError::Other { .. })));
+        Journal::open(&file, "abc")
+            .unwrap()
+            .add(vec![run(0)])
+            .unwrap();
+        assert!(matches!(
+            Journal::open(&file, "xyz"),
+            Err(JournalError::Other { .. })
+        ));
         std::fs::write(&file, "my notes\nof today").unwrap();
-        assert!(matches!(Journal::open(&file, "abc"), Err(JournalError::Line { line: 1, .. })));
-        assert_eq!(std::fs::read_to_string(&file).unwrap(), "my notes\nof today", "untouched");
+        assert!(matches!(
+            Journal::open(&file, "abc"),
+            Err(JournalError::Line { line: 1, .. })
+        ));
+        assert_eq!(
+            std::fs::read_to_string(&file).unwrap(),
+            "my notes\nof today",
+            "untouched"
+        );
     }
 }

@@ -70,7 +70,10 @@ impl Gauge {
         self.taught.len() == stand.taught.len()
             && shapes.into_iter().all(|(a, b)| Arc::ptr_eq(a, b))
             && self.flaw_below_px == stand.settings.flaw_below_px()
-            && limits.iter().map(|limits| limits.branch_above_px).eq(self.branch_above_px.iter().copied())
+            && limits
+                .iter()
+                .map(|limits| limits.branch_above_px)
+                .eq(self.branch_above_px.iter().copied())
     }
 }
 
@@ -125,10 +128,16 @@ impl Recipe {
 
     fn gauge(&mut self, stand: &Stand) -> usize {
         let settings = &stand.settings;
-        let limits = settings.shapes.iter().map(|shape| crate::inspect::limits(settings, shape));
+        let limits = settings
+            .shapes
+            .iter()
+            .map(|shape| crate::inspect::limits(settings, shape));
         let limits: Vec<Limits> = limits.collect();
         let asked = limits.iter().map(Asked::by);
-        let known = self.gauges.iter().position(|gauge| gauge.same(stand, &limits));
+        let known = self
+            .gauges
+            .iter()
+            .position(|gauge| gauge.same(stand, &limits));
         if let Some(known) = known {
             let gauge = &mut self.gauges[known];
             for (all, more) in gauge.asked.iter_mut().zip(asked) {
@@ -136,7 +145,11 @@ impl Recipe {
             }
             return known;
         }
-        let taught: Vec<Silhouette> = stand.taught.iter().map(|taught| (**taught).clone()).collect();
+        let taught: Vec<Silhouette> = stand
+            .taught
+            .iter()
+            .map(|taught| (**taught).clone())
+            .collect();
         self.gauges.push(Gauge {
             taught: stand.taught.clone(),
             flaw_below_px: settings.flaw_below_px(),
@@ -211,12 +224,20 @@ impl Surveyor {
             again_of_hat.push(k);
         }
         Self {
-            hats: recipe.hats.iter().map(|hat| TopHat::new(&hat.plan, level)).collect(),
+            hats: recipe
+                .hats
+                .iter()
+                .map(|hat| TopHat::new(&hat.plan, level))
+                .collect(),
             again,
             again_of_hat,
             hat: Vec::new(),
             otsu: OtsuLevels::default(),
-            judges: recipe.gauges.iter().map(|gauge| gauge.judge.clone()).collect(),
+            judges: recipe
+                .gauges
+                .iter()
+                .map(|gauge| gauge.judge.clone())
+                .collect(),
             recipe,
         }
     }
@@ -231,7 +252,12 @@ impl Surveyor {
         };
         for (k, Hat { window, plan }) in recipe.hats.iter().enumerate() {
             let of_hat = |survey: &Survey| recipe.splits[survey.split].hat == k;
-            if !recipe.surveys.iter().zip(wanted).any(|(survey, &wanted)| wanted && of_hat(survey)) {
+            if !recipe
+                .surveys
+                .iter()
+                .zip(wanted)
+                .any(|(survey, &wanted)| wanted && of_hat(survey))
+            {
                 continue;
             }
             self.hat.resize(plan.width_px * plan.height_px, 0);
@@ -282,7 +308,9 @@ impl Surveyor {
                 let (judge, asked) = (&mut self.judges[of.gauge], &recipe.gauges[of.gauge].asked);
                 let sights = scene.regions.iter().map(|region| {
                     let runs = &scene.runs[region.runs.clone()];
-                    Sight::of(&of.geometry, region, || judge.gauge_all(asked, region, runs))
+                    Sight::of(&of.geometry, region, || {
+                        judge.gauge_all(asked, region, runs)
+                    })
                 });
                 out[s] = (sights.collect(), scene.specks);
             }

@@ -24,7 +24,10 @@ pub fn pair_parts(a: &[Part], b: &[Part], gate_mm: f64) -> Vec<Pair> {
             taken[j] = true;
         }
     }
-    let both = of_a.into_iter().enumerate().map(|(i, b)| Pair { a: Some(i), b });
+    let both = of_a
+        .into_iter()
+        .enumerate()
+        .map(|(i, b)| Pair { a: Some(i), b });
     let alone = (0..b.len()).filter(|&j| !taken[j]);
     let alone = alone.map(|j| Pair {
         a: None,
@@ -92,7 +95,12 @@ pub(super) mod tests {
     #[test]
     fn the_nearest_go_together_and_nobody_is_lost() {
         let a = [part(100.0, 30.0), part(160.0, 30.0), part(400.0, 30.0)];
-        let b = [part(161.0, 30.0), part(158.0, 31.0), part(99.0, 30.5), part(300.0, 30.0)];
+        let b = [
+            part(161.0, 30.0),
+            part(158.0, 31.0),
+            part(99.0, 30.5),
+            part(300.0, 30.0),
+        ];
         let pair = |a, b| Pair { a, b };
         assert_eq!(
             pair_parts(&a, &b, 10.0),

@@ -51,7 +51,10 @@ impl Shift {
         match self {
             Self::Light(by) => {
                 let table: [u8; 256] = std::array::from_fn(|gray| (gray as f64 * by).round() as u8);
-                frame.pixels.iter_mut().for_each(|gray| *gray = table[usize::from(*gray)]);
+                frame
+                    .pixels
+                    .iter_mut()
+                    .for_each(|gray| *gray = table[usize::from(*gray)]);
             }
             Self::Blur => blur(frame, before),
             Self::Size(by) => resize(frame, before, by),
@@ -98,7 +101,10 @@ fn resize(frame: &mut Frame, before: &mut Vec<u8>, by: f64) {
     };
     let (columns, rows) = (places(width), places(height));
     for (y, &(top, bottom, down)) in rows.iter().enumerate() {
-        let (above, below) = (&before[top * width..][..width], &before[bottom * width..][..width]);
+        let (above, below) = (
+            &before[top * width..][..width],
+            &before[bottom * width..][..width],
+        );
         let out = &mut frame.pixels[y * width..][..width];
         for (pixel, &(left, right, across)) in out.iter_mut().zip(&columns) {
             let mix = |a: f32, b: f32, share: f32| a + (b - a) * share;
@@ -134,7 +140,10 @@ mod tests {
         assert_eq!(shifted(Shift::Light(2.0), |_, _| 200), frame(|_, _| 255));
         assert_eq!(shifted(Shift::Blur, |_, _| 77), frame(|_, _| 77));
         assert_eq!(shifted(Shift::Size(0.9), |_, _| 77), frame(|_, _| 77));
-        assert_eq!(shifted(Shift::Size(1.0), |x, y| (x * y) as u8), frame(|x, y| (x * y) as u8));
+        assert_eq!(
+            shifted(Shift::Size(1.0), |x, y| (x * y) as u8),
+            frame(|x, y| (x * y) as u8)
+        );
     }
 
     #[test]

@@ -56,12 +56,19 @@ pub fn run(
 ) -> Result<(), SweepError> {
     let key = shift.map(Shift::key);
     let stand = |point: usize| points[point].stand.as_ref().ok();
-    let todo = wanted.iter().copied().filter(|&point| journal.find(point, key.as_deref()).is_none());
-    let todo: Vec<(usize, &Stand)> = todo.filter_map(|point| Some((point, stand(point)?))).collect();
+    let todo = wanted
+        .iter()
+        .copied()
+        .filter(|&point| journal.find(point, key.as_deref()).is_none());
+    let todo: Vec<(usize, &Stand)> = todo
+        .filter_map(|point| Some((point, stand(point)?)))
+        .collect();
     for pass in passes(&todo, bench) {
         let stands: Vec<&Stand> = pass.iter().map(|(_, stand)| *stand).collect();
         let settings = stands.len() as u64;
-        let tried = try_all(bench, &stands, shift, |frames| done(frames as u64 * settings))?;
+        let tried = try_all(bench, &stands, shift, |frames| {
+            done(frames as u64 * settings)
+        })?;
         let tried = tried.ok_or(SweepError::Stopped)?;
         let finished = pass.iter().zip(tried).map(|((point, _), tried)| Finished {
             point: *point,
@@ -151,11 +158,25 @@ impl Standing {
 }
 
 /// Everything that is known of the points, in their order.
-pub fn standings(points: &[Point], axes: &[Axis], journal: &Journal, shifts: &[Shift], costs: Costs) -> Vec<Standing> {
+pub fn standings(
+    points: &[Point],
+    axes: &[Axis],
+    journal: &Journal,
+    shifts: &[Shift],
+    costs: Costs,
+) -> Vec<Standing> {
     let tried: Vec<Option<Tried>> = (0..points.len())
-        .map(|point| journal.find(point, None).copied().filter(|_| points[point].stand.is_ok()))
+        .map(|point| {
+            journal
+                .find(point, None)
+                .copied()
+                .filter(|_| points[point].stand.is_ok())
+        })
         .collect();
-    let whole: Vec<Option<Tried>> = tried.iter().map(|tried| tried.filter(Tried::is_whole)).collect();
+    let whole: Vec<Option<Tried>> = tried
+        .iter()
+        .map(|tried| tried.filter(Tried::is_whole))
+        .collect();
     let plateaus = plateaus(points, axes, &whole, costs);
     let front = front(&whole);
     let standing = |point: usize| {
@@ -176,7 +197,9 @@ pub fn standings(points: &[Point], axes: &[Axis], journal: &Journal, shifts: &[S
 
 /// Those that were tried to the end, the best first: least cost, then the one that stays best on the changed recordings, then the widest plateau.
 pub fn ranked(standings: &[Standing], costs: Costs) -> Vec<&Standing> {
-    let whole = standings.iter().filter(|standing| standing.tried.is_whole());
+    let whole = standings
+        .iter()
+        .filter(|standing| standing.tried.is_whole());
     let mut order: Vec<&Standing> = whole.collect();
     order.sort_by(|a, b| {
         let judged = |s: &Standing| s.shifted.is_empty();
@@ -212,12 +235,19 @@ fn front(tried: &[Option<Tried>]) -> Vec<bool> {
             front.push((misses, alarms));
         }
     }
-    let on = |tried: &Option<Tried>| tried.is_some_and(|tried| front.binary_search(&counts(&tried)).is_ok());
+    let on = |tried: &Option<Tried>| {
+        tried.is_some_and(|tried| front.binary_search(&counts(&tried)).is_ok())
+    };
     tried.iter().map(on).collect()
 }
 
 /// For each point the steps that can be made both ways along every axis, least and sum, without costing more.
-fn plateaus(points: &[Point], axes: &[Axis], tried: &[Option<Tried>], costs: Costs) -> Vec<(usize, usize)> {
+fn plateaus(
+    points: &[Point],
+    axes: &[Axis],
+    tried: &[Option<Tried>],
+    costs: Costs,
+) -> Vec<(usize, usize)> {
     let place_of = |k: usize| points[k].place.as_deref();
     let known: std::collections::HashMap<&[usize], f64> = (0..points.len())
         .filter_map(|k| Some((place_of(k)?, costs.of(&tried[k]?))))
@@ -252,7 +282,13 @@ fn plateaus(points: &[Point], axes: &[Axis], tried: &[Option<Tried>], costs: Cos
 }
 
 /// From which value to which the chosen point could be moved along each axis without costing more.
-pub fn stretches(points: &[Point], axes: &[Axis], standings: &[Standing], chosen: &Standing, costs: Costs) -> Vec<(String, String)> {
+pub fn stretches(
+    points: &[Point],
+    axes: &[Axis],
+    standings: &[Standing],
+    chosen: &Standing,
+    costs: Costs,
+) -> Vec<(String, String)> {
     let Some(place) = &points[chosen.point].place else {
         return Vec::new();
     };
@@ -261,14 +297,27 @@ pub fn stretches(points: &[Point], axes: &[Axis], standings: &[Standing], chosen
         let mut at = place.clone();
         at[axis] = value;
         let same = |s: &&Standing| points[s.point].place.as_ref() == Some(&at);
-        standings.iter().find(same).is_some_and(|s| s.tried.is_whole() && costs.of(&s.tried) <= cost)
+        standings
+            .iter()
+            .find(same)
+            .is_some_and(|s| s.tried.is_whole() && costs.of(&s.tried) <= cost)
     };
     let stretch = |axis: usize| {
         let here = place[axis];
-        let low = (0..here).rev().take_while(|&value| as_good(axis, value)).last().unwrap_or(here);
+        let low = (0..here)
+            .rev()
+            .take_while(|&value| as_good(axis, value))
+            .last()
+            .unwrap_or(here);
         let count = axes[axis].values.len();
-        let high = (here + 1..count).take_while(|&value| as_good(axis, value)).last().unwrap_or(here);
-        (axes[axis].values[low].clone(), axes[axis].values[high].clone())
+        let high = (here + 1..count)
+            .take_while(|&value| as_good(axis, value))
+            .last()
+            .unwrap_or(here);
+        (
+            axes[axis].values[low].clone(),
+            axes[axis].values[high].clone(),
+        )
     };
     (0..axes.len()).map(stretch).collect()
 }
@@ -311,11 +360,14 @@ mod tests {
             values: (0..count).map(|k| k.to_string()).collect(),
         };
         let mut journal = Journal::default();
-        let runs = results.iter().enumerate().map(|(point, &(misses, alarms))| Finished {
-            point,
-            shift: None,
-            tried: tried(misses, alarms),
-        });
+        let runs = results
+            .iter()
+            .enumerate()
+            .map(|(point, &(misses, alarms))| Finished {
+                point,
+                shift: None,
+                tried: tried(misses, alarms),
+            });
         journal.add(runs.collect()).unwrap();
         let axes = vec![axis("a", results.len() / width), axis("b", width)];
         ((0..results.len()).map(point).collect(), axes, journal)
@@ -325,14 +377,23 @@ mod tests {
     fn the_middle_of_the_plateau_is_chosen() {
         let x = (1, 0);
         let o = (0, 0);
-        let rows = [[x, x, x, x, x], [x, o, o, o, x], [x, o, o, o, x], [x, o, o, o, x], [x, x, x, x, o]];
+        let rows = [
+            [x, x, x, x, x],
+            [x, o, o, o, x],
+            [x, o, o, o, x],
+            [x, o, o, o, x],
+            [x, x, x, x, o],
+        ];
         let (points, axes, journal) = grid(5, &rows.concat());
         let all = standings(&points, &axes, &journal, &[], COSTS);
         let best = ranked(&all, COSTS)[0];
         assert_eq!(points[best.point].place, Some(vec![2, 2]));
         assert_eq!((best.plateau, best.plateau_sum), (1, 2));
         let text = |low: &str, high: &str| (low.to_owned(), high.to_owned());
-        assert_eq!(stretches(&points, &axes, &all, best, COSTS), [text("1", "3"), text("1", "3")]);
+        assert_eq!(
+            stretches(&points, &axes, &all, best, COSTS),
+            [text("1", "3"), text("1", "3")]
+        );
     }
 
     #[test]

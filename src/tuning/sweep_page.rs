@@ -65,7 +65,10 @@ impl SweepPage<'_> {
     }
 
     fn invalid(&self) -> Vec<(&Point, &String)> {
-        let wrong = self.points.iter().filter_map(|point| Some((point, point.stand.as_ref().err()?)));
+        let wrong = self
+            .points
+            .iter()
+            .filter_map(|point| Some((point, point.stand.as_ref().err()?)));
         wrong.collect()
     }
 
@@ -76,17 +79,32 @@ impl SweepPage<'_> {
             let _ = writeln!(text, "  {name:<15} {what}");
         };
         let invalid = self.invalid().len();
-        let given_up = self.standings.iter().filter(|standing| !standing.tried.is_whole()).count();
+        let given_up = self
+            .standings
+            .iter()
+            .filter(|standing| !standing.tried.is_whole())
+            .count();
         let tried = self.standings.len();
-        line("tried", format!("{tried} settings, {given_up} of them given up early; {invalid} more contradict themselves"));
+        line(
+            "tried",
+            format!(
+                "{tried} settings, {given_up} of them given up early; {invalid} more contradict themselves"
+            ),
+        );
         match self.present() {
             Some(present) => line("as they are", self.counts(present)),
             None => line("as they are", "not valid".to_owned()),
         }
         for standing in self.front().into_iter().take(PRINTED) {
-            line("trade-off", format!("{}: {}", self.counts(standing), self.values(standing)));
+            line(
+                "trade-off",
+                format!("{}: {}", self.counts(standing), self.values(standing)),
+            );
         }
-        line("chosen", format!("{}: {}", self.counts(self.chosen), self.values(self.chosen)));
+        line(
+            "chosen",
+            format!("{}: {}", self.counts(self.chosen), self.values(self.chosen)),
+        );
         for (axis, (low, high)) in self.axes.iter().zip(&self.stretches) {
             line("as good", format!("{} from {low} to {high}", axis.key));
         }
@@ -122,7 +140,11 @@ impl SweepPage<'_> {
             section("trade-offs", "Best trade-offs", self.front_section()),
             section("curve", "Misses against false alarms", self.curve()),
             section("keys", "Key by key", self.keys()),
-            section("invalid", "Points that contradict themselves", self.invalid_section()),
+            section(
+                "invalid",
+                "Points that contradict themselves",
+                self.invalid_section(),
+            ),
         ];
         let lead = html! {
             p.soft { code { (self.settings) } " varied on " code { (self.recording) } ", " (counted(self.labels, "label", "labels")) }
@@ -141,7 +163,10 @@ impl SweepPage<'_> {
         let count = |hits: usize, of: usize| Count::new(hits as u64, of as u64);
         let row = |(k, axis): (usize, &Axis)| {
             let value = |standing: &Standing| self.points[standing.point].values[k].clone();
-            let as_good = self.stretches.get(k).map(|(low, high)| format!("{low} to {high}"));
+            let as_good = self
+                .stretches
+                .get(k)
+                .map(|(low, high)| format!("{low} to {high}"));
             vec![
                 axis.key.clone(),
                 self.points[0].values[k].clone(),
@@ -175,8 +200,13 @@ impl SweepPage<'_> {
     /// The candidates on the changed recordings.
     fn shifted(&self) -> Markup {
         let judged = ranked(self.standings, self.costs);
-        let judged: Vec<_> = judged.into_iter().filter(|standing| !standing.shifted.is_empty()).collect();
-        let names = judged.first().map_or_else(Vec::new, |s| s.shifted.iter().map(|(name, _)| *name).collect());
+        let judged: Vec<_> = judged
+            .into_iter()
+            .filter(|standing| !standing.shifted.is_empty())
+            .collect();
+        let names = judged.first().map_or_else(Vec::new, |s| {
+            s.shifted.iter().map(|(name, _)| *name).collect()
+        });
         let mut head = vec!["settings", "as recorded"];
         head.extend(names);
         let counts = |tried: &super::Tried| format!("{} / {}", tried.misses, tried.false_alarms());
@@ -206,7 +236,13 @@ impl SweepPage<'_> {
         };
         let front = self.front();
         let rows: Vec<_> = front.iter().take(LISTED).map(row).collect();
-        let head = ["missed", "rejected wrongly", "good not found", "shots at nothing", "settings"];
+        let head = [
+            "missed",
+            "rejected wrongly",
+            "good not found",
+            "shots at nothing",
+            "settings",
+        ];
         html! {
             p { "No other setting that was tried has fewer of one and no more of the other." }
             (table(&head, &[0, 1, 2, 3], &rows))
@@ -217,9 +253,16 @@ impl SweepPage<'_> {
         let percent = |count: usize, of: usize| 100.0 * count as f64 / of.max(1) as f64;
         let at = |standing: &Standing| {
             let tried = &standing.tried;
-            (percent(tried.false_alarms(), tried.good), percent(tried.misses, tried.bad))
+            (
+                percent(tried.false_alarms(), tried.good),
+                percent(tried.misses, tried.bad),
+            )
         };
-        let whole = || self.standings.iter().filter(|standing| standing.tried.is_whole());
+        let whole = || {
+            self.standings
+                .iter()
+                .filter(|standing| standing.tried.is_whole())
+        };
         let most = whole().map(at).fold((1.0, 1.0), |most: (f64, f64), at| {
             (most.0.max(at.0), most.1.max(at.1))
         });
@@ -230,7 +273,11 @@ impl SweepPage<'_> {
         };
         let mut front = self.front();
         front.sort_by(|a, b| at(a).0.total_cmp(&at(b).0));
-        let line: Vec<_> = front.iter().map(|s| place(s)).map(|(x, y)| format!("{} {}", n(x), n(y))).collect();
+        let line: Vec<_> = front
+            .iter()
+            .map(|s| place(s))
+            .map(|(x, y)| format!("{} {}", n(x), n(y)))
+            .collect();
         let mut dots: Vec<(f64, f64)> = whole().map(place).collect();
         dots.sort_by(|a, b| a.0.total_cmp(&b.0).then(a.1.total_cmp(&b.1)));
         dots.dedup();
@@ -246,19 +293,30 @@ impl SweepPage<'_> {
             text.note x=(n(chosen.0 + 10.0)) y=(n(chosen.1 - 8.0)) { "chosen" }
         };
         let titles = ("false alarms, % of good parts", "misses, % of bad parts");
-        let drawing = plot.draw("Misses against false alarms of all settings", titles, &marks);
-        figure(&drawing, "A dot for each result; the line joins the best trade-offs, the ring is the chosen one, the cross the settings as they are.", false)
+        let drawing = plot.draw(
+            "Misses against false alarms of all settings",
+            titles,
+            &marks,
+        );
+        figure(
+            &drawing,
+            "A dot for each result; the line joins the best trade-offs, the ring is the chosen one, the cross the settings as they are.",
+            false,
+        )
     }
 
     /// What the best setting with each value of a key comes to.
     fn keys(&self) -> Markup {
         let best = |k: usize, value: &str| {
-            let with = self.standings.iter().filter(|s| s.point > 0 && s.tried.is_whole() && self.points[s.point].values[k] == value);
+            let with = self.standings.iter().filter(|s| {
+                s.point > 0 && s.tried.is_whole() && self.points[s.point].values[k] == value
+            });
             with.min_by(|a, b| self.costs.of(&a.tried).total_cmp(&self.costs.of(&b.tried)))
         };
         let row = |k: usize, value: &String| {
             let counts = best(k, value).map(|s| [s.tried.misses, s.tried.false_alarms()]);
-            let text = |at: usize| counts.map_or_else(|| "-".to_owned(), |counts| counts[at].to_string());
+            let text =
+                |at: usize| counts.map_or_else(|| "-".to_owned(), |counts| counts[at].to_string());
             vec![value.clone(), text(0), text(1)]
         };
         html! {
@@ -297,7 +355,17 @@ pub fn points_csv(page: &SweepPage<'_>) -> Result<Vec<u8>, csv::Error> {
     let mut csv = csv::Writer::from_writer(Vec::new());
     let mut head: Vec<&str> = vec!["point"];
     head.extend(page.axes.iter().map(|axis| axis.key.as_str()));
-    head.extend(["misses", "bad", "false_rejects", "good", "not_found", "stray", "room_percent", "given_up_after", "cost"]);
+    head.extend([
+        "misses",
+        "bad",
+        "false_rejects",
+        "good",
+        "not_found",
+        "stray",
+        "room_percent",
+        "given_up_after",
+        "cost",
+    ]);
     head.extend(["worst_shifted_cost", "trade_off", "chosen", "problem"]);
     csv.write_record(&head)?;
     for (k, point) in page.points.iter().enumerate() {
@@ -308,7 +376,8 @@ pub fn points_csv(page: &SweepPage<'_>) -> Result<Vec<u8>, csv::Error> {
         row.push(point.stand.as_ref().err().cloned().unwrap_or_default());
         csv.write_record(&row)?;
     }
-    csv.into_inner().map_err(|error| csv::Error::from(error.into_error()))
+    csv.into_inner()
+        .map_err(|error| csv::Error::from(error.into_error()))
 }
 
 fn figures(page: &SweepPage<'_>, standing: Option<&Standing>) -> [String; 12] {
@@ -326,7 +395,10 @@ fn figures(page: &SweepPage<'_>, standing: Option<&Standing>) -> [String; 12] {
         tried.not_found.to_string(),
         tried.stray.to_string(),
         tried.room_percent.to_string(),
-        tried.given_up_after.map(|labels| labels.to_string()).unwrap_or_default(),
+        tried
+            .given_up_after
+            .map(|labels| labels.to_string())
+            .unwrap_or_default(),
         page.costs.of(tried).to_string(),
         worst.unwrap_or_default(),
         yes(standing.on_front),

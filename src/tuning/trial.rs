@@ -115,16 +115,23 @@ impl Trial {
         self.look.belt_mm = surveyed.belt_mm;
         self.look.specks = *specks;
         self.look.spots.clear();
-        self.look.spots.extend(sights.iter().map(|sight| self.rules.spot(sight)));
+        self.look
+            .spots
+            .extend(sights.iter().map(|sight| self.rules.spot(sight)));
         self.happen(surveyed.captured_us + self.latency_us);
         self.sorter.take(&self.look);
     }
 
     fn happen(&mut self, until: Micros) {
         while let Some(event) = self.sorter.poll(until) {
-            let Event::Part(part, _) = event else { continue };
+            let Event::Part(part, _) = event else {
+                continue;
+            };
             let hopeless = part.reasons.has(Reason::Touching) || part.reasons.has(Reason::Partial);
-            let severity = part.judged.filter(|_| !hopeless).map(|judged| judged.severity);
+            let severity = part
+                .judged
+                .filter(|_| !hopeless)
+                .map(|judged| judged.severity);
             self.parts.push(Placed::from(&part));
             self.severity.push(severity.unwrap_or(f64::INFINITY));
         }
@@ -158,13 +165,19 @@ impl Trial {
 
     fn tally(&self, labels: &[Label]) -> Tried {
         let score = score(labels, &self.parts, self.gate_mm);
-        let bad = labels.iter().filter(|label| label.verdict == Verdict::Reject).count();
+        let bad = labels
+            .iter()
+            .filter(|label| label.verdict == Verdict::Reject)
+            .count();
         let stray = score.unlabelled.iter().filter_map(|found| found.part);
         let room = |(label, part): (usize, usize)| {
             let (wanted, got) = (labels[label].verdict, self.parts[part].verdict);
             (wanted == got).then(|| (self.severity[part] - 1.0).abs())
         };
-        let pairs = score.matches.iter().filter_map(|found| found.label.zip(found.part));
+        let pairs = score
+            .matches
+            .iter()
+            .filter_map(|found| found.label.zip(found.part));
         let least = pairs.filter_map(room).fold(1.0, f64::min);
         Tried {
             bad,
@@ -172,7 +185,9 @@ impl Trial {
             misses: score.misses.len(),
             false_rejects: score.false_rejects.len(),
             not_found: score.not_found.len(),
-            stray: stray.filter(|&part| self.parts[part].verdict == Verdict::Reject).count(),
+            stray: stray
+                .filter(|&part| self.parts[part].verdict == Verdict::Reject)
+                .count(),
             room_percent: (least * 1e4).round() / 100.0,
             given_up_after: None,
         }
@@ -209,7 +224,13 @@ pub fn try_all(
         for trial in trials.iter().filter(|trial| trial.given_up.is_none()) {
             wanted[trial.survey] = true;
         }
-        let surveyed = survey(bench.recording, &mut surveyors, block.clone(), shift, &wanted)?;
+        let surveyed = survey(
+            bench.recording,
+            &mut surveyors,
+            block.clone(),
+            shift,
+            &wanted,
+        )?;
         merge(&mut trials, &surveyed, bench);
         done(block.len());
     }
@@ -240,7 +261,9 @@ fn survey(
             scope.spawn(move || lane(recording, surveyor, mine, shift, wanted))
         };
         let handles: Vec<_> = surveyors.iter_mut().enumerate().map(spawn).collect();
-        let joined = handles.into_iter().map(|handle| handle.join().expect("a worker does not panic"));
+        let joined = handles
+            .into_iter()
+            .map(|handle| handle.join().expect("a worker does not panic"));
         joined.collect::<Result<Vec<_>, _>>()
     })?;
     for (w, lane) in lanes.into_iter().enumerate() {
@@ -275,7 +298,9 @@ fn lane(
 /// Each setting by itself takes the frames of a block.
 fn merge(trials: &mut [Trial], surveyed: &[Surveyed], bench: &Bench<'_>) {
     let share = trials.len().div_ceil(bench.workers).max(1);
-    let now = surveyed.last().map_or(Micros::ZERO, |frame| frame.captured_us);
+    let now = surveyed
+        .last()
+        .map_or(Micros::ZERO, |frame| frame.captured_us);
     thread::scope(|scope| {
         for trials in trials.chunks_mut(share) {
             scope.spawn(move || {
@@ -299,11 +324,17 @@ fn finish(trials: Vec<Trial>, bench: &Bench<'_>) -> Vec<Tried> {
     }
     thread::scope(|scope| {
         let spawn = |lot: Vec<Trial>| {
-            let finish = move || lot.into_iter().map(|trial| trial.finish(bench.labels)).collect::<Vec<_>>();
+            let finish = move || {
+                lot.into_iter()
+                    .map(|trial| trial.finish(bench.labels))
+                    .collect::<Vec<_>>()
+            };
             scope.spawn(finish)
         };
         let handles: Vec<_> = lots.into_iter().map(spawn).collect();
-        let joined = handles.into_iter().flat_map(|handle| handle.join().expect("a worker does not panic"));
+        let joined = handles
+            .into_iter()
+            .flat_map(|handle| handle.join().expect("a worker does not panic"));
         joined.collect()
     })
 }

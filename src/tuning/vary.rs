@@ -35,7 +35,10 @@ impl FromStr for Axis {
         }
         let values = match values.split_once("..") {
             Some((low, rest)) => range(low.trim(), rest)?,
-            None => values.split(',').map(|value| value.trim().to_owned()).collect(),
+            None => values
+                .split(',')
+                .map(|value| value.trim().to_owned())
+                .collect(),
         };
         if values.iter().any(String::is_empty) {
             return Err(BadAxis("a value is empty"));
@@ -49,8 +52,15 @@ impl FromStr for Axis {
 
 /// Both ends belong to it; the upper one if the steps reach it.
 fn range(low: &str, rest: &str) -> Result<Vec<String>, BadAxis> {
-    let (high, step) = rest.split_once(':').ok_or(BadAxis("a range needs a step"))?;
-    let number = |text: &str| text.trim().parse().ok().filter(|value: &f64| value.is_finite());
+    let (high, step) = rest
+        .split_once(':')
+        .ok_or(BadAxis("a range needs a step"))?;
+    let number = |text: &str| {
+        text.trim()
+            .parse()
+            .ok()
+            .filter(|value: &f64| value.is_finite())
+    };
     let numbers = (number(low), number(high), number(step));
     let (Some(low_at), Some(high_at), Some(step_by)) = numbers else {
         return Err(BadAxis("LO, HI and STEP are numbers"));
@@ -63,7 +73,11 @@ fn range(low: &str, rest: &str) -> Result<Vec<String>, BadAxis> {
         return Err(BadAxis("more than 100000 values"));
     }
     // As many decimals as were typed, so that 1.5 + 3 * 0.1 is 1.8 and nothing near it.
-    let decimals = |text: &str| text.trim().split_once('.').map_or(0, |(_, digits)| digits.len());
+    let decimals = |text: &str| {
+        text.trim()
+            .split_once('.')
+            .map_or(0, |(_, digits)| digits.len())
+    };
     let places = decimals(low).max(decimals(step));
     let value = |k: usize| format!("{:.places$}", low_at + k as f64 * step_by);
     Ok((0..=count as usize).map(value).collect())
@@ -128,8 +142,21 @@ mod tests {
             ["1.5", "1.6", "1.7", "1.8", "1.9", "2.0"]
         );
         assert_eq!(axis("a.b = 40 .. 47:3").values, ["40", "43", "46"]);
-        assert_eq!(axis("picture.element=square,octagon").values, ["square", "octagon"]);
-        for bad in ["a", "=1..2:1", "a=1..2", "a=2..1:1", "a=1..2:0", "a=x..2:1", "a=1,,2", "a=0..1:1e-9", "a=0..inf:1"] {
+        assert_eq!(
+            axis("picture.element=square,octagon").values,
+            ["square", "octagon"]
+        );
+        for bad in [
+            "a",
+            "=1..2:1",
+            "a=1..2",
+            "a=2..1:1",
+            "a=1..2:0",
+            "a=x..2:1",
+            "a=1,,2",
+            "a=0..1:1e-9",
+            "a=0..inf:1",
+        ] {
             assert!(bad.parse::<Axis>().is_err(), "{bad}");
         }
     }
@@ -139,7 +166,10 @@ mod tests {
         let axes = [axis("a=1..3:1"), axis("b=1..4:1")];
         let all = points(&axes, Choice::All);
         assert_eq!(all.len(), 12);
-        assert_eq!((all[0].clone(), all[1].clone(), all[4].clone()), (vec![0, 0], vec![0, 1], vec![1, 0]));
+        assert_eq!(
+            (all[0].clone(), all[1].clone(), all[4].clone()),
+            (vec![0, 0], vec![0, 1], vec![1, 0])
+        );
         let choice = |count, seed| Choice::Random { count, seed };
         let some = points(&axes, choice(5, 1));
         assert_eq!(some.len(), 5);

@@ -36,10 +36,27 @@ impl Bench {
         fs::write(bench.path("a.toml"), text).unwrap();
         let (settings, mask) = (bench.text("a.toml"), bench.text("star.png"));
         let belt = bench.text("belt");
-        let scene = ["draw", "oat-stars", "--settings", &settings, "--parts", parts, "--seed", seed];
+        let scene = [
+            "draw",
+            "oat-stars",
+            "--settings",
+            &settings,
+            "--parts",
+            parts,
+            "--seed",
+            seed,
+        ];
         done(&[&scene[..], &["--out", &belt, "--mask", &mask]].concat());
         let shape = bench.text("star.toml");
-        done(&["teach", "--mask", &mask, "--settings", &settings, "--out", &shape]);
+        done(&[
+            "teach",
+            "--mask",
+            &mask,
+            "--settings",
+            &settings,
+            "--out",
+            &shape,
+        ]);
         bench
     }
 

@@ -40,7 +40,13 @@ fn bitmap(width: usize, mask: &str) -> Bitmap {
 
 fn mask(set: &Bitmap) -> String {
     let (width, height) = (set.width_px(), set.height_px());
-    let digit = |i: usize| if set.has((i % width) as i32, (i / width) as i32) { '1' } else { '0' };
+    let digit = |i: usize| {
+        if set.has((i % width) as i32, (i / width) as i32) {
+            '1'
+        } else {
+            '0'
+        }
+    };
     (0..width * height).map(digit).collect()
 }
 
@@ -80,7 +86,10 @@ fn answer(question: Question) -> Value {
             t,
         } => {
             let (a, t) = (bitmap(width, &a), bitmap(t_width, &t));
-            let (columns, rows) = (a.width_px() - t.width_px() + 1, a.height_px() - t.height_px() + 1);
+            let (columns, rows) = (
+                a.width_px() - t.width_px() + 1,
+                a.height_px() - t.height_px() + 1,
+            );
             let places = (0..columns * rows).map(|i| (i % columns, i / columns));
             let figures = places.map(|place| {
                 let (missing, excess) = gauge_masks(&shifted(&t, &a, place), &a);
