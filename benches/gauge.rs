@@ -26,7 +26,7 @@ fn star(x: f64, y: f64) -> bool {
 fn gasket(x: f64, y: f64) -> bool {
     let radius = x.hypot(y);
     let tab = x > 30.0 && x < 75.0 && y > 3.0 && y < 24.0;
-    (radius < 60.0 && radius > 33.0) || (tab && radius > 33.0)
+    radius > 33.0 && (radius < 60.0 || tab)
 }
 
 fn taught(inside: Inside) -> Silhouette {

@@ -225,10 +225,13 @@ pub struct Inspector {
 impl Inspector {
     /// Makes every buffer. `taught` has one silhouette for each of `settings.shapes`.
     pub fn new(settings: &Settings, taught: &[Silhouette], level: Level) -> Self {
+        let geometry = settings.geometry();
+        let mut judge = judge(settings, taught);
+        judge.reserve(geometry.window.width_px, geometry.window.height_px);
         Self {
-            geometry: settings.geometry(),
+            geometry,
             stage: Stage::new(&stage::Plan::of(settings), level),
-            judge: judge(settings, taught),
+            judge,
             rules: Rules::of(settings),
         }
     }

@@ -20,6 +20,12 @@ fn example(from: &str, to: &str) -> tempfile::TempDir {
     fs::create_dir(folder.path().join("config")).expect("a new folder");
     let file = folder.path().join("config/x.toml");
     fs::write(file, text.replacen(from, to, 1)).expect("a new file");
+    let shapes = folder.path().join("demo-frames/shapes");
+    fs::create_dir_all(&shapes).expect("a new folder");
+    for name in ["oat-star.toml", "oat-star.png"] {
+        let from = Path::new(env!("CARGO_MANIFEST_DIR")).join("demo-frames/shapes");
+        fs::copy(from.join(name), shapes.join(name)).expect("the taught shape");
+    }
     folder
 }
 
@@ -42,7 +48,7 @@ config/x.toml: no problems
   picture            160.0 x 120.0 mm at 0.25 mm/px
   motion blur        0.16 mm = 0.64 px
   region             640 x 480 px from column 0, row 0
-  element            181 px
+  element            121 px
 ";
     let shown = text(&run.stdout);
     assert!(shown.starts_with(expected), "{shown}");
@@ -61,7 +67,7 @@ fn good_settings_as_json() {
     let shown = json(&run.stdout);
     assert_eq!(shown["ok"], true);
     assert_eq!(shown["region"]["width_px"], 640);
-    assert_eq!(shown["element_px"], 181);
+    assert_eq!(shown["element_px"], 121);
     assert_eq!(shown["decision_mm"], 201.8);
     assert_eq!(shown["t3_5_us"], 1750);
     assert_eq!(shown["outlets"][0]["name"], "air-nozzle");
@@ -69,7 +75,7 @@ fn good_settings_as_json() {
 
 #[test]
 fn every_problem_is_one_line_and_the_exit_code_is_2() {
-    let folder = example("element_mm = 45.0", "element_mm = 0.0");
+    let folder = example("element_mm = 30.0", "element_mm = 0.0");
     let file = folder.path().join("config/x.toml");
     let more = fs::read_to_string(&file)
         .expect("readable")
@@ -172,5 +178,29 @@ fn wrong_arguments_are_bad_input() {
             .status
             .code(),
         Some(0)
+    );
+}
+
+/// What only the taught shape can tell stands in the same list.
+#[test]
+fn settings_that_do_not_fit_the_taught_shape_are_problems_too() {
+    let run = beltwright(
+        example("element_mm = 30.0", "element_mm = 15.0").path(),
+        CHECK,
+    );
+    assert_eq!(run.status.code(), Some(2));
+    let said = text(&run.stderr);
+    assert!(
+        said.contains("picture.element_mm = 15.0: expected at least 19."),
+        "{said}"
+    );
+    let folder = example("", "");
+    fs::remove_file(folder.path().join("demo-frames/shapes/oat-star.png")).expect("it was there");
+    let run = beltwright(folder.path(), CHECK);
+    assert_eq!(run.status.code(), Some(2));
+    assert!(
+        text(&run.stderr).contains("shape[0].file"),
+        "{}",
+        text(&run.stderr)
     );
 }

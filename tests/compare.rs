@@ -37,8 +37,8 @@ fn a_limit_moved_by_a_tenth_lists_exactly_the_parts_between() {
         .expect("figures leave gaps");
     for k in [busy, empty] {
         let limit = |mm: f64| format!("missing_mm = {mm:.1}");
-        let low = bench.changed("low.toml", &[("missing_mm = 2.0", &limit(tenth(k)))]);
-        let high = bench.changed("high.toml", &[("missing_mm = 2.0", &limit(tenth(k + 1)))]);
+        let low = bench.changed("low.toml", &[("missing_mm =", &limit(tenth(k)))]);
+        let high = bench.changed("high.toml", &[("missing_mm =", &limit(tenth(k + 1)))]);
         let csv = bench.text("changes.csv");
         done(&[
             "compare",
@@ -107,7 +107,7 @@ fn the_same_settings_are_the_same_and_others_end_with_one() {
         "--expect-same",
     ]);
     assert_eq!(same.status.code(), Some(0));
-    let all = bench.changed("b.toml", &[("missing_mm = 2.0", "missing_mm = 0.5")]);
+    let all = bench.changed("b.toml", &[("missing_mm =", "missing_mm = 0.5")]);
     let (csv, html) = (bench.text("c.csv"), bench.text("c.html"));
     let other = beltwright(&[
         "compare",
@@ -147,7 +147,7 @@ fn the_same_settings_are_the_same_and_others_end_with_one() {
 #[test]
 fn frames_of_another_size_are_refused() {
     let bench = Bench::new("10", "3");
-    let small = bench.changed("b.toml", &[("height_px = 480", "height_px = 400")]);
+    let small = bench.changed("b.toml", &[("height_px =", "height_px = 400")]);
     let a = bench.text("a.toml");
     let output = beltwright(&[
         "compare",

@@ -9,7 +9,7 @@ use std::time::{Duration, Instant};
 use bench_belt::{Bench, beltwright, done, table};
 
 const FIXED: (&str, &str) = (
-    "threshold = { method = \"otsu\", floor = 30 }",
+    "threshold =",
     "threshold = { method = \"fixed\", level = 40 }",
 );
 
@@ -74,8 +74,8 @@ fn every_point_counts_what_a_replay_with_its_settings_counts() {
             "alone.toml",
             &[
                 (FIXED.0, &level),
-                ("missing_mm = 2.0", &missing),
-                ("element_mm = 45.0", &element),
+                ("missing_mm =", &missing),
+                ("element_mm =", &element),
             ],
         );
         let counted = ["misses", "false_rejects", "not_found"].map(|column| row[column].clone());
@@ -172,7 +172,7 @@ fn parts_are_joined_to_the_same_table_and_values_written_back() {
     let belt = bench.text("belt");
     let spoilt = bench.changed(
         "spoilt.toml",
-        &[("missing_mm = 2.0", "missing_mm = 9.0 # spoilt")],
+        &[("missing_mm =", "missing_mm = 9.0 # spoilt")],
     );
     let vary = [
         "sweep",

@@ -10,6 +10,7 @@ use crate::settings::{self, Loaded, Outlet, Problems, SWITCH_BYTES, Settings, Se
 use crate::units::Window;
 
 use super::Outcome;
+use super::station::taught;
 
 /// Checks a settings file and shows what it amounts to
 #[derive(Debug, clap::Args)]
@@ -31,7 +32,8 @@ impl Args {
             out.write_all(settings::schema_text().as_bytes())?;
             return Ok(Outcome::Done);
         };
-        match settings::load(&file) {
+        let checked = settings::load(&file).and_then(|loaded| taught(&loaded).map(|_| loaded));
+        match checked {
             Ok(loaded) => show(&loaded, self.json, out),
             Err(SettingsError::Bad(problems)) if self.json => complain(&problems, out),
             Err(error) => Err(error.into()),

@@ -26,6 +26,7 @@ mod sorting;
 mod station;
 mod sweep;
 mod teach;
+mod timeline;
 
 use std::io::{self, Write};
 

@@ -91,6 +91,13 @@ impl Args {
         let off = line.all_off(first_us, &mut Vec::new()).map_err(device);
         let (outcome, took) = ran?;
         off?;
+        if stop_flag()?.load(Ordering::Relaxed) {
+            eprintln!(
+                "stopped by hand after {} parts: every outlet is off, nothing was written",
+                outcome.parts.len()
+            );
+            return Ok(Ending::FellShort);
+        }
         let results = Results {
             station: &station,
             folder: &self.recording,
@@ -210,11 +217,6 @@ impl Args {
             each,
         )?;
         bar.finish_and_clear();
-        let parts = outcome.parts.len();
-        ensure!(
-            !stop.load(Ordering::Relaxed),
-            "stopped by hand after {parts} parts; nothing was written"
-        );
         outcome.health = sorter.health().clone();
         Ok((outcome, took))
     }

@@ -32,10 +32,7 @@ pub(super) fn write(
     labels: Option<(&[Label], &Score)>,
     took: &Durations,
 ) -> anyhow::Result<()> {
-    let name = results
-        .folder
-        .file_name()
-        .unwrap_or(results.folder.as_os_str());
+    let name = results.folder.file_name().unwrap_or(results.folder.as_os_str());
     let report = Report {
         name: name.to_string_lossy().into_owned(),
         span_us: results.recording.span_us(),

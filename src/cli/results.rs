@@ -8,6 +8,7 @@ use serde_json::{Value, json};
 
 use super::files::write_whole;
 use super::station::Station;
+use super::timeline;
 use crate::belt::Part;
 use crate::frames::Frame;
 use crate::recording::{Label, Recording};
@@ -109,6 +110,7 @@ impl Results<'_> {
         out: &mut dyn Write,
     ) -> anyhow::Result<()> {
         if !quiet {
+            timeline::print(self.outcome, self.signals, self.settings(), out)?;
             let summary = summarize(self.outcome, self.settings());
             write!(out, "{}", summary.table(self.outcome))?;
             writeln!(out, "  {:<15} {}", "signals", self.signal_line())?;

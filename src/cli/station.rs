@@ -6,13 +6,13 @@ use std::sync::Arc;
 
 use anyhow::Context;
 
-use crate::inspect::Inspector;
+use crate::inspect::{Inspector, limits};
 use crate::recording::{Recording, RecordingError, SizePx};
 use crate::replay::Artist;
 use crate::settings::{
     self, ElementKind, Loaded, PartSize, Problem, Problems, Settings, SettingsError,
 };
-use crate::shape::{Figures, Measurer, Silhouette, Taught};
+use crate::shape::{Figures, Finding, Measurer, Model, Silhouette, Taught, findings};
 use crate::stage::Level;
 
 /// A station as its settings describe it.
@@ -26,8 +26,7 @@ impl Station {
     /// Reads settings and shapes, and reports everything that is wrong with either.
     pub(super) fn open(file: &Path) -> anyhow::Result<Self> {
         let loaded = settings::load(file)?;
-        let taught = Shelf::default().taught(&loaded)?;
-        let taught = taught.iter().map(|shape| (**shape).clone()).collect();
+        let taught = taught(&loaded)?;
         let level = Level::choose()?;
         Ok(Self {
             loaded,
@@ -72,13 +71,27 @@ pub(super) fn frame_size(settings: &Settings) -> SizePx {
     }
 }
 
+/// The shapes that the settings name, at the picture's scale.
+pub(super) fn taught(loaded: &Loaded) -> Result<Vec<Silhouette>, SettingsError> {
+    let taught = Shelf::default().taught(loaded)?;
+    Ok(taught.iter().map(|shape| (**shape).clone()).collect())
+}
+
 /// Taught shapes that were read, each at the scales that were asked for. Equal ones are the same `Arc`.
 #[derive(Default)]
 pub(super) struct Shelf {
-    known: HashMap<(PathBuf, u64), (Arc<Silhouette>, Sizes)>,
+    known: HashMap<(PathBuf, u64), Shelved>,
 }
 
-/// What the settings are checked against; the widest inside by a square and by a disc.
+/// A shape with what the settings are checked against.
+#[derive(Clone)]
+struct Shelved {
+    silhouette: Arc<Silhouette>,
+    model: Arc<Model>,
+    sizes: Sizes,
+}
+
+/// The widest inside by a square, and by a disc.
 #[derive(Clone, Copy)]
 struct Sizes {
     size: PartSize,
@@ -116,7 +129,11 @@ impl Shelf {
     ) -> Result<(Arc<Silhouette>, Vec<Problem>), Problem> {
         let settings = &loaded.settings;
         let read = self.read(loaded.shape_path(shape), settings.camera.mm_per_px);
-        let (silhouette, sizes) = read.map_err(|error| {
+        let Shelved {
+            silhouette,
+            model,
+            sizes,
+        } = read.map_err(|error| {
             let expected = "expected a taught shape, made by `beltwright teach`";
             loaded.problem(
                 &format!("shape[{shape}].file"),
@@ -127,17 +144,27 @@ impl Shelf {
         if settings.picture.element == ElementKind::Octagon {
             size.inside_mm = sizes.widest_disc_mm;
         }
-        Ok((silhouette, loaded.part_problems(shape, &size)))
+        let mut problems = loaded.part_problems(shape, &size);
+        let limits = limits(settings, &settings.shapes[shape]);
+        let found = findings(&model, &limits, silhouette.mm_per_px);
+        let problem = |finding: Finding| {
+            loaded.problem(&format!("shape[{shape}].{}", finding.key), finding.problem)
+        };
+        problems.extend(found.into_iter().map(problem));
+        Ok((silhouette, problems))
     }
 
-    fn read(&mut self, file: PathBuf, mm_per_px: f64) -> anyhow::Result<(Arc<Silhouette>, Sizes)> {
+    fn read(&mut self, file: PathBuf, mm_per_px: f64) -> anyhow::Result<Shelved> {
         let key = (file, mm_per_px.to_bits());
         if let Some(known) = self.known.get(&key) {
             return Ok(known.clone());
         }
         let silhouette = Taught::read(&key.0)?.silhouette.resampled(mm_per_px)?;
-        let sizes = size_of(&silhouette)?;
-        let read = (Arc::new(silhouette), sizes);
+        let read = Shelved {
+            sizes: size_of(&silhouette)?,
+            model: Arc::new(Model::new(silhouette.clone())),
+            silhouette: Arc::new(silhouette),
+        };
         self.known.insert(key, read.clone());
         Ok(read)
     }

@@ -3,7 +3,7 @@
 //! pairs of points, with weights that forget what lies far off. Those are Geman and McClure's (1987) while the pose is
 //! coarse, and Beaton and Tukey's biweight (1974) at the end, under which a bite or a burr weighs nothing.
 
-use super::field::{Field, Sample};
+use super::field::{Field, LANES, Samples};
 use super::{Model, Pose};
 
 /// How much a point at a distance from the silhouette's edge weighs; `scale_px` is where it begins to be forgotten.
@@ -59,16 +59,33 @@ impl<'a> Lookup<'a> {
         }
     }
 
-    /// The point from the silhouette's centroid, turned back by the angle (not yet mirrored back), and what lies there.
-    #[inline]
-    fn at(&self, point: [f32; 2]) -> (f32, f32, Sample) {
-        let (dx, dy) = (point[0] - self.middle[0], point[1] - self.middle[1]);
-        let (u, v) = (self.cos * dx + self.sin * dy, self.cos * dy - self.sin * dx);
-        let sample = self
-            .field
-            .sample(self.centroid[0] + self.side * u, self.centroid[1] + v);
-        (u, v, sample)
+    /// What lies at up to [`LANES`] points; the last one again where there are fewer.
+    #[inline(always)]
+    fn at(&self, points: &[[f32; 2]]) -> Batch {
+        let mut batch = Batch::default();
+        let [mut x, mut y] = [[0.0; LANES]; 2];
+        for i in 0..LANES {
+            let point = points[i.min(points.len() - 1)];
+            (batch.u[i], batch.v[i]) = (point[0] - self.middle[0], point[1] - self.middle[1]);
+        }
+        for i in 0..LANES {
+            let (dx, dy) = (batch.u[i], batch.v[i]);
+            batch.u[i] = self.cos * dx + self.sin * dy;
+            batch.v[i] = self.cos * dy - self.sin * dx;
+            x[i] = self.centroid[0] + self.side * batch.u[i];
+            y[i] = self.centroid[1] + batch.v[i];
+        }
+        batch.samples = self.field.sample(x, y);
+        batch
     }
+}
+
+/// Points from the silhouette's centroid, turned back by the angle (not yet mirrored back), and what lies there.
+#[derive(Clone, Copy, Default)]
+struct Batch {
+    u: [f32; LANES],
+    v: [f32; LANES],
+    samples: Samples,
 }
 
 /// Mean of the points' squared distances relative to that of `scale_px`, each counted as 1 at most: 0 if all points lie
@@ -76,11 +93,15 @@ impl<'a> Lookup<'a> {
 pub(super) fn cost(model: &Model, points: &[[f32; 2]], place: &Place, scale_px: f64) -> f64 {
     let lookup = Lookup::new(model, place);
     let per_square = (1.0 / (scale_px * scale_px)) as f32;
-    let of = |&point: &[f32; 2]| {
-        let distance = lookup.at(point).2.distance;
-        (distance * distance * per_square).min(1.0)
-    };
-    f64::from(points.iter().map(of).sum::<f32>()) / points.len().max(1) as f64
+    let mut sums = [0.0_f32; LANES];
+    for some in points.chunks(LANES) {
+        let distances = lookup.at(some).samples.distance;
+        for i in 0..LANES {
+            let counts = if i < some.len() { 1.0 } else { 0.0 };
+            sums[i] += counts * (distances[i] * distances[i] * per_square).min(1.0);
+        }
+    }
+    sums.into_iter().map(f64::from).sum::<f64>() / points.len().max(1) as f64
 }
 
 /// One step; returns how far it moved the farthest point of the silhouette, at most.
@@ -128,40 +149,42 @@ impl Normal {
         let mut total = Self::default();
         let per_radius = (1.0 / radius) as f32;
         // Short sums in f32, the total in f64: fast, and nothing is lost.
-        for some in points.chunks(64) {
-            let mut sum = [0.0_f32; 9];
-            for &point in some {
-                let (u, v, sample) = lookup.at(point);
-                let weight = weight(sample.distance);
-                let (gu, gv) = (lookup.side * sample.slope_x, sample.slope_y);
-                // Shifting the silhouette by +u moves the point by -u in its frame; turning it, along (v, -u).
-                let turn = (gu * v - gv * u) * per_radius;
-                let (wu, wv, wt) = (weight * gu, weight * gv, weight * turn);
-                let terms = [
-                    wu * gu,
-                    wu * gv,
-                    -wu * turn,
-                    wv * gv,
-                    -wv * turn,
-                    wt * turn,
-                    wu * sample.distance,
-                    wv * sample.distance,
-                    -wt * sample.distance,
-                ];
-                for (sum, term) in sum.iter_mut().zip(terms) {
-                    *sum += term;
+        for many in points.chunks(16 * LANES) {
+            let mut sums = [[0.0_f32; LANES]; 9];
+            for some in many.chunks(LANES) {
+                let Batch { u, v, samples } = lookup.at(some);
+                for i in 0..LANES {
+                    let distance = samples.distance[i];
+                    let weight = if i < some.len() {
+                        weight(distance)
+                    } else {
+                        0.0
+                    };
+                    let (gu, gv) = (lookup.side * samples.slope_x[i], samples.slope_y[i]);
+                    // Shifting the silhouette by +u moves the point by -u in its frame; turning it, along (v, -u).
+                    let turn = (gu * v[i] - gv * u[i]) * per_radius;
+                    let (wu, wv, wt) = (weight * gu, weight * gv, weight * turn);
+                    sums[0][i] += wu * gu;
+                    sums[1][i] += wu * gv;
+                    sums[2][i] -= wu * turn;
+                    sums[3][i] += wv * gv;
+                    sums[4][i] -= wv * turn;
+                    sums[5][i] += wt * turn;
+                    sums[6][i] += wu * distance;
+                    sums[7][i] += wv * distance;
+                    sums[8][i] -= wt * distance;
                 }
             }
-            let sum = sum.map(f64::from);
+            let sums = sums.map(|lanes| f64::from(lanes.into_iter().sum::<f32>()));
             total
                 .matrix
                 .iter_mut()
-                .zip(&sum[..6])
+                .zip(&sums[..6])
                 .for_each(|(total, sum)| *total += sum);
             total
                 .right
                 .iter_mut()
-                .zip(&sum[6..])
+                .zip(&sums[6..])
                 .for_each(|(total, sum)| *total += sum);
         }
         total

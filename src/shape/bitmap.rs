@@ -89,6 +89,23 @@ impl Bitmap {
         row[last] |= tail;
     }
 
+    /// Puts the pixels from (x, y) on rightwards whose bits are set into the set; `x` must be a multiple of 4 and there must be
+    /// at most 4 bits. What lies outside the rectangle is left out.
+    #[inline]
+    pub(super) fn insert_few(&mut self, x: usize, y: usize, bits: u64) {
+        debug_assert!(x.is_multiple_of(4) && bits < 16);
+        if y < self.height_px && x < self.width_px {
+            let room = self.width_px - x;
+            let bits = if room < 4 {
+                bits & ((1 << room) - 1)
+            } else {
+                bits
+            };
+            let words = self.width_px.div_ceil(64);
+            self.words[y * words + x / 64] |= bits << (x % 64);
+        }
+    }
+
     /// How many pixels are in the set.
     pub fn count(&self) -> u64 {
         self.words

@@ -4,10 +4,12 @@ use std::f64::consts::TAU;
 
 use super::{Bitmap, Pose, Silhouette};
 
-/// Polygons around (0, 0) in px, joined by the even-odd rule.
+/// Polygons in px, each with (0, 0) inside, joined by the even-odd rule.
 #[derive(Clone, Debug)]
 pub(crate) struct Outline {
     rings: Vec<Vec<(f64, f64)>>,
+    /// For each the smallest and largest distance of its edge from (0, 0).
+    radii: Vec<[f64; 2]>,
     reach: f64,
 }
 
@@ -24,9 +26,13 @@ pub(crate) enum Flaw {
 
 impl Outline {
     fn new(rings: Vec<Vec<(f64, f64)>>) -> Self {
-        let corners = rings.iter().flatten();
-        let reach = corners.map(|&(x, y)| x.hypot(y)).fold(0.0, f64::max);
-        Self { rings, reach }
+        let radii: Vec<[f64; 2]> = rings.iter().map(|ring| radii(ring)).collect();
+        let reach = radii.iter().map(|radii| radii[1]).fold(0.0, f64::max);
+        Self {
+            rings,
+            radii,
+            reach,
+        }
     }
 
     fn round(x: f64, y: f64, radius: f64) -> Vec<(f64, f64)> {
@@ -76,17 +82,24 @@ impl Outline {
         Self::new(vec![outer, Self::round(0.0, 0.0, 0.55 * radius)])
     }
 
+    /// The same with every corner moved by `off` along x and y.
+    pub(crate) fn uneven(&self, mut off: impl FnMut() -> f64) -> Self {
+        let mut moved = |&(x, y): &(f64, f64)| (x + off(), y + off());
+        let rings = self.rings.iter();
+        Self::new(
+            rings
+                .map(|ring| ring.iter().map(&mut moved).collect())
+                .collect(),
+        )
+    }
+
     pub(crate) fn has(&self, x: f64, y: f64) -> bool {
-        let crossings = |ring: &Vec<(f64, f64)>| {
-            let next = ring.iter().cycle().skip(1);
-            ring.iter()
-                .zip(next)
-                .filter(|&(a, b)| {
-                    (a.1 > y) != (b.1 > y) && x < a.0 + (y - a.1) / (b.1 - a.1) * (b.0 - a.0)
-                })
-                .count()
+        let radius = x.hypot(y);
+        let within = |(ring, &[low, high]): (&Vec<(f64, f64)>, &[f64; 2])| {
+            radius < low || (radius <= high && encloses(ring, x, y))
         };
-        self.rings.iter().map(crossings).sum::<usize>() % 2 == 1
+        let rings = self.rings.iter().zip(&self.radii);
+        rings.filter(|&ring| within(ring)).count() % 2 == 1
     }
 
     fn has_with(&self, x: f64, y: f64, flaws: &[Flaw]) -> bool {
@@ -121,6 +134,29 @@ impl Outline {
             }
         }
     }
+}
+
+fn radii(ring: &[(f64, f64)]) -> [f64; 2] {
+    let next = ring.iter().cycle().skip(1);
+    let nearest = ring.iter().zip(next).map(|(a, b)| {
+        let along = (b.0 - a.0, b.1 - a.1);
+        let square = (along.0 * along.0 + along.1 * along.1).max(1e-12);
+        let part = (-(a.0 * along.0 + a.1 * along.1) / square).clamp(0.0, 1.0);
+        (a.0 + part * along.0).hypot(a.1 + part * along.1)
+    });
+    let farthest = ring.iter().map(|&(x, y)| x.hypot(y));
+    [
+        nearest.fold(f64::INFINITY, f64::min),
+        farthest.fold(0.0, f64::max),
+    ]
+}
+
+fn encloses(ring: &[(f64, f64)], x: f64, y: f64) -> bool {
+    let next = ring.iter().cycle().skip(1);
+    let crossed = ring.iter().zip(next).filter(|&(a, b)| {
+        (a.1 > y) != (b.1 > y) && x < a.0 + (y - a.1) / (b.1 - a.1) * (b.0 - a.0)
+    });
+    crossed.count() % 2 == 1
 }
 
 /// The outline as it would be taught from very many parts, and where its (0, 0) lies in it.

@@ -58,8 +58,10 @@ fn for_each_crack(runs: &[Run], mut crack: impl FnMut(i64, i64, usize)) {
 /// The columns that are covered in exactly one of two rows.
 fn between(above: &[Run], below: &[Run], y: i64, crack: &mut impl FnMut(i64, i64, usize)) {
     let end = |row: &[Run], i: usize| {
-        row.get(i / 2)
-            .map_or(u32::MAX, |run| if i % 2 == 0 { run.x0 } else { run.x1 })
+        row.get(i / 2).map_or(
+            u32::MAX,
+            |run| if i.is_multiple_of(2) { run.x0 } else { run.x1 },
+        )
     };
     let (mut i, mut j) = (0, 0);
     let mut from = None;

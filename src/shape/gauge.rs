@@ -31,6 +31,7 @@ impl Gauge {
         let missing = pixels.saturating_sub(self.distances.values.len());
         self.distances.values.reserve(missing);
         self.flaws.reserve(width_px, height_px);
+        self.patches.reserve(height_px);
     }
 
     /// `(missing, excess)`; patches of fewer than `flaw_below_px` pixels are ignored.
@@ -166,8 +167,8 @@ mod tests {
             }
             depth
         };
-        let missing = largest(t, a, &transform.to_background(t).to_vec());
-        let excess = largest(a, t, &transform.to_foreground(t).to_vec());
+        let missing = largest(t, a, transform.to_background(t));
+        let excess = largest(a, t, transform.to_foreground(t));
         (missing, excess)
     }
 

@@ -232,8 +232,10 @@ fn at_centroid(region: &Region, runs: &[Run], model: &Model, overlay: &mut Overl
 
 #[cfg(test)]
 mod tests {
+    use super::super::bitmap::tests::any_bitmap;
     use super::super::drawn::{self, Flaw, Outline};
     use super::*;
+    use proptest::prelude::*;
 
     const COMMON: Common = Common {
         flaw_below_px: 6.0,
@@ -401,6 +403,20 @@ mod tests {
         assert_eq!(drawing.part.count(), region.area_px);
         assert_eq!(drawing.excess.count_common(&drawing.taught), 0);
         assert_eq!(drawing.missing.count_common(&drawing.part), 0);
+    }
+
+    proptest! {
+        #![proptest_config(ProptestConfig::with_cases(40))]
+        #[test]
+        fn any_region_gets_a_verdict(set in any_bitmap(90)) {
+            prop_assume!(set.count() > 0);
+            let shape = |outline: &Outline| (drawn::silhouette(outline, 0.25).0, limits());
+            let small = vec![shape(&Outline::star(20.0)), shape(&Outline::disc(9.0))];
+            let found = judged(&mut Judge::new(small, COMMON), &set);
+            prop_assert!((0.0..=1.0).contains(&found.fit) && found.severity >= 0.0);
+            prop_assert_eq!(found.severity > 1.0, !found.reasons.is_empty());
+            prop_assert!(found.pose.x_px.is_finite() && (0.0..360.0).contains(&found.pose.angle_deg));
+        }
     }
 
     #[test]

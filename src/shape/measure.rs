@@ -40,6 +40,7 @@ impl Measurer {
         self.set.reserve(width_px, height_px);
         self.scratch.reserve(width_px, height_px);
         self.hull.reserve(height_px);
+        self.patches.reserve(height_px);
         self.skeleton.reserve(width_px, height_px);
     }
 

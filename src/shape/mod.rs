@@ -12,6 +12,8 @@ mod field;
 mod findings;
 mod gauge;
 mod gauged;
+#[cfg(test)]
+mod gauge_accuracy;
 mod judge;
 mod measure;
 mod model;
@@ -41,7 +43,6 @@ pub use gauged::{Asked, Gauged, Sizes};
 pub use judge::{Drawing, Judge};
 pub use measure::{Measurer, Measures, skeleton};
 pub use model::Model;
-pub use pose::Found;
 pub use silhouette::{MAX_SIDE_PX, Silhouette};
 pub use store::{Figures, GrayPicture, Taught, read_gray};
 pub use symmetry::Symmetry;

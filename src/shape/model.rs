@@ -19,7 +19,7 @@ pub struct Model {
     /// Pixel centres of the majority that are the first or last of their row, from the centroid.
     pub(super) rim: Vec<(f64, f64)>,
     /// How far edges of good parts are from the silhouette's, as a standard deviation.
-    spread_px: f64,
+    pub(super) spread_px: f64,
     pub(super) field: Field,
     cells: Cells,
 }
@@ -108,7 +108,7 @@ impl Model {
 }
 
 /// Across an edge that is normally distributed with standard deviation s, the integral of 4 p (1 - p) is 4 s / sqrt(pi).
-/// An edge that is sharp still differs by the 0.29 px that pixels cannot tell.
+/// An edge that is sharp still differs by what pixels cannot tell: evenly over one pixel.
 fn spread_px(silhouette: &Silhouette, field: &Field) -> f64 {
     let shares = silhouette
         .share

@@ -29,6 +29,12 @@ struct Node {
 }
 
 impl Patches {
+    /// Makes room for sets of this many rows with eight runs each.
+    pub(super) fn reserve(&mut self, height_px: usize) {
+        self.runs
+            .reserve((8 * height_px).saturating_sub(self.runs.len()));
+    }
+
     /// How many patches there are.
     pub(super) fn count(&mut self, set: &Bitmap, joined: Joined) -> usize {
         self.label(set, joined);

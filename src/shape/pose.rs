@@ -15,13 +15,15 @@ use super::{Model, Pose, edge};
 
 /// A pose and how well it fits.
 #[derive(Clone, Copy, Debug, Default, PartialEq)]
-pub struct Found {
+pub(super) struct Found {
     /// Where the silhouette lies; of poses that look the same the one with the smallest angle, face up.
-    pub pose: Pose,
+    pub(super) pose: Pose,
     /// Overlap over union.
-    pub fit: f64,
+    pub(super) fit: f64,
 }
 
+/// How many poses are looked at with all points in the end, at most.
+const FINALISTS: usize = 4;
 /// Points for coarse work.
 const FEW: usize = 96;
 /// Distances above this are all the same once the pose is fine.
@@ -38,7 +40,7 @@ pub(super) struct Finder {
     points: Vec<[f32; 2]>,
     few: Vec<[f32; 2]>,
     middles: Vec<(f64, f64)>,
-    finalists: Shortlist<6>,
+    finalists: Shortlist<FINALISTS>,
 }
 
 impl Default for Finder {
@@ -141,13 +143,17 @@ impl Finder {
                 coarse.offer(cost, place);
             }
         }
+        let mut fine = Shortlist::<2>::default();
         for &(_, place) in coarse.as_slice() {
             let place = self.steps(search, place, &FINER);
-            let known = self.finalists.as_slice().iter();
-            if !known.clone().any(|(_, other)| search.alike(&place, other)) {
-                let cost = align::cost(search.model, &self.points, &place, FINE_PX);
-                self.finalists.offer(cost, place);
+            let tried = self.finalists.as_slice().iter().chain(fine.as_slice());
+            if !tried.clone().any(|(_, other)| search.alike(&place, other)) {
+                fine.offer(align::cost(search.model, &self.few, &place, FINE_PX), place);
             }
+        }
+        for &(_, place) in fine.as_slice() {
+            let cost = align::cost(search.model, &self.points, &place, FINE_PX);
+            self.finalists.offer(cost, place);
         }
     }
 
@@ -161,31 +167,34 @@ impl Finder {
         place
     }
 
-    /// Of the finalists that may be the best, the one with the largest overlap.
+    /// Of the finalists that may be the best, the one with the largest overlap. Only those that overlap about as much as
+    /// the best are finished.
     fn decide(&self, search: &Search, overlay: &mut Overlay) -> Found {
-        let within = 1.5 * self.lowest_cost() + 0.02;
-        let mut best: Option<Found> = None;
-        let mut placed = None;
-        for &(_, place) in self
+        let within = 1.3 * self.lowest_cost() + 0.01;
+        let likely = self
             .finalists
             .as_slice()
             .iter()
-            .filter(|(cost, _)| *cost <= within)
-        {
-            let pose = search.pose(&self.finish(search, place));
-            overlay.place(search.region, search.runs, search.model, pose);
-            placed = Some(pose);
-            let found = Found {
-                pose,
-                fit: overlay.fit(),
-            };
-            if best.is_none_or(|best| found.beats(&best)) {
-                best = Some(found);
+            .filter(|(cost, _)| *cost <= within);
+        let mut fits = [0.0_f64; FINALISTS];
+        let only = likely.clone().count() == 1;
+        if !only {
+            for (fit, &(_, place)) in fits.iter_mut().zip(likely.clone()) {
+                *fit = search.place(&place, overlay).fit;
+            }
+        }
+        let enough = fits.iter().copied().fold(0.0, f64::max) - 0.01;
+        let mut best: Option<Found> = None;
+        let mut last = Found::default();
+        for (_, &(_, place)) in fits.iter().zip(likely).filter(|&(&fit, _)| fit >= enough) {
+            last = search.place(&self.finish(search, place), overlay);
+            if best.is_none_or(|best| last.beats(&best)) {
+                best = Some(last);
             }
         }
         // There always is a finalist, since there always is a start.
         let best = best.unwrap_or_default();
-        if placed != Some(best.pose) {
+        if last != best {
             overlay.place(search.region, search.runs, search.model, best.pose);
         }
         best

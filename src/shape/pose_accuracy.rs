@@ -123,7 +123,7 @@ fn count() -> u64 {
     let asked = std::env::var("POSES")
         .ok()
         .and_then(|text| text.parse().ok());
-    asked.unwrap_or(40)
+    asked.unwrap_or(24)
 }
 
 /// A bite, a burr or a broken corner; that one in one of the given directions, in radians.
@@ -156,7 +156,7 @@ fn stars_are_found_to_a_tenth_of_a_pixel() {
     let mut star = Taught::new(Outline::star(76.0));
     let good = spread("good stars", &star.misses(|_| Vec::new()));
     assert!(good.middle[3] <= 0.1 && good.rim[3] <= 0.2, "{good:?}");
-    let flawed = star.misses(|random| one_flaw(random, 76.0, 0.0..6.28));
+    let flawed = star.misses(|random| one_flaw(random, 76.0, 0.0..std::f64::consts::TAU));
     let flawed = spread("stars with a flaw", &flawed);
     assert!(
         flawed.middle[3] <= 0.3 && flawed.rim[3] <= 0.3,

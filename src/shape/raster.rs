@@ -68,7 +68,7 @@ fn covers(silhouette: &Silhouette, u: i64, v: i64) -> bool {
 /// all of a cell, and how far away the next cell is that is not.
 ///
 /// A cell whose corners are all covered by the majority is covered everywhere, since interpolation stays between the
-/// corners. A step of one pixel in the picture moves by at most one cell, so as many pixels can be passed over at once.
+/// corners. So blocks of pixels that are far enough from cells of another kind can be filled at once.
 #[derive(Clone, Debug)]
 pub(super) struct Cells {
     columns: usize,
@@ -115,8 +115,14 @@ impl Cells {
         if column < self.columns && row < self.rows {
             self.reach[row * self.columns + column]
         } else {
-            -1
+            self.reach_from_outside(u >> 32, v >> 32)
         }
+    }
+
+    /// Everything around the picture is outside; how far the picture is.
+    fn reach_from_outside(&self, column: i64, row: i64) -> i8 {
+        let off = |at: i64, cells: usize| (-1 - at).max(at + 2 - cells as i64).max(0);
+        -off(column, self.columns).max(off(row, self.rows)).min(100) as i8
     }
 }
 
@@ -146,6 +152,9 @@ fn chebyshev(kinds: &[i16], columns: usize, rows: usize, of: i16) -> Vec<i16> {
     reach
 }
 
+/// Pixels along the side of a block.
+const BLOCK: usize = 4;
+
 /// Puts every pixel that `silhouette` covers at `placement` into `to`, whose pixel (0, 0) is the picture's pixel `origin`.
 /// What lies outside `to` is left out.
 pub(super) fn draw(
@@ -155,68 +164,45 @@ pub(super) fn draw(
     origin: (i32, i32),
     to: &mut Bitmap,
 ) {
-    for row in 0..to.height_px() {
-        let y = i64::from(origin.1) + row as i64;
-        let start = placement.inverse(i64::from(origin.0), y);
-        let Some((first, last)) = columns_within(placement, cells, start, to.width_px()) else {
-            continue;
-        };
-        let mut from = None;
-        let mut x = first;
-        while x < last {
-            let (u, v) = (
-                start.0 + placement.u[0] * x as i64,
-                start.1 + placement.v[0] * x as i64,
+    // From a block's first pixel to its middle.
+    let half = |row: &[i64; 3]| (row[0] + row[1]) * (BLOCK as i64 - 1) / 2;
+    let (half_u, half_v) = (half(&placement.u), half(&placement.v));
+    for top in (0..to.height_px()).step_by(BLOCK) {
+        for left in (0..to.width_px()).step_by(BLOCK) {
+            let (x, y) = (
+                i64::from(origin.0) + left as i64,
+                i64::from(origin.1) + top as i64,
             );
-            let reach = cells.reach_at(u, v);
-            let inside = reach > 0 || (reach == 0 && covers(silhouette, u, v));
-            match from {
-                None if inside => from = Some(x),
-                Some(from_x) if !inside => {
-                    to.insert_run(row, from_x, x);
-                    from = None;
-                }
-                _ => {}
+            let (u, v) = placement.inverse(x, y);
+            // A block's pixels lie within 2.2 px of its middle, whatever the angle: in at most the third cell from there.
+            match cells.reach_at(u + half_u, v + half_v) {
+                4.. => (0..BLOCK).for_each(|row| to.insert_few(left, top + row, 0b1111)),
+                ..=-4 => {}
+                _ => draw_block(silhouette, cells, placement, (u, v), (left, top), to),
             }
-            x += reach.unsigned_abs().max(1) as usize;
-        }
-        if let Some(from) = from {
-            to.insert_run(row, from, last);
         }
     }
 }
 
-/// The columns of a picture row that can lie within the silhouette's picture, as a half-open range; none is `None`.
-/// `start` is where column 0 lies.
-fn columns_within(
-    placement: &Placement,
+fn draw_block(
+    silhouette: &Silhouette,
     cells: &Cells,
+    placement: &Placement,
     start: (i64, i64),
-    width: usize,
-) -> Option<(usize, usize)> {
-    let (mut low, mut high) = (0.0, width as f64);
-    let sides = [
-        (placement.u[0], start.0, cells.columns),
-        (placement.v[0], start.1, cells.rows),
-    ];
-    for (slope, at_left, cells) in sides {
-        let (slope, at_left) = (slope as f64 / ONE, at_left as f64 / ONE);
-        // A cell more on either side than the -1 to cells - 1 that matter, against rounding.
-        let (from, to) = (-2.0 - at_left, cells as f64 - at_left);
-        if slope.abs() < 1e-6 {
-            // Such a row does not change its place by a whole cell.
-            if from > 0.0 || to < 0.0 {
-                return None;
-            }
-            continue;
+    (left, top): (usize, usize),
+    to: &mut Bitmap,
+) {
+    for row in 0..BLOCK {
+        let mut bits = 0;
+        for column in 0..BLOCK {
+            let along = |slopes: &[i64; 3]| slopes[0] * column as i64 + slopes[1] * row as i64;
+            let (u, v) = (start.0 + along(&placement.u), start.1 + along(&placement.v));
+            let reach = cells.reach_at(u, v);
+            let inside = reach > 0 || (reach == 0 && covers(silhouette, u, v));
+            bits |= u64::from(inside) << column;
         }
-        let (a, b) = (from / slope, to / slope);
-        low = a.min(b).max(low);
-        high = a.max(b).min(high);
+        to.insert_few(left, top + row, bits);
     }
-    // Both are at least 0, or there is no column.
-    let (first, last) = (low as usize, high.max(0.0) as usize + 1);
-    (low < high).then_some((first, last.min(width)))
 }
 
 #[cfg(test)]

@@ -3,6 +3,8 @@
 use crate::stage::{Region, Run};
 
 use super::align::Place;
+use super::overlay::Overlay;
+use super::pose::Found;
 use super::{Model, Pose};
 
 /// One region and one silhouette. All places are measured from the region's upper left pixel.
@@ -113,8 +115,18 @@ impl<'a> Search<'a> {
             && turn * self.model.radius_px < 2.0
     }
 
+    /// Draws the silhouette there into `overlay`.
+    pub(super) fn place(&self, place: &Place, overlay: &mut Overlay) -> Found {
+        let pose = self.pose(place);
+        overlay.place(self.region, self.runs, self.model, pose);
+        Found {
+            pose,
+            fit: overlay.fit(),
+        }
+    }
+
     /// The pose in the picture; of those that look the same the one with the smallest angle.
-    pub(super) fn pose(&self, place: &Place) -> Pose {
+    fn pose(&self, place: &Place) -> Pose {
         let region = self.region;
         let pose = place.pose((f64::from(region.x_min), f64::from(region.y_min)));
         Pose {

@@ -53,6 +53,10 @@ impl Skeleton {
         let pixels = (width_px + 2) * (height_px + 2);
         self.pixels
             .reserve(pixels.saturating_sub(self.pixels.len()));
+        // The border of a part is a few times as long as its box is high.
+        for list in [&mut self.border, &mut self.gone] {
+            list.reserve((8 * (width_px + height_px)).saturating_sub(list.len()));
+        }
     }
 
     /// How many branches of the skeleton of `set` are longer than `above_px`.
@@ -72,17 +76,25 @@ impl Skeleton {
         long
     }
 
+    /// The skeleton of `set` as a set.
+    pub(super) fn of(&mut self, set: &Bitmap) -> Bitmap {
+        self.thin(set);
+        let mut skeleton = Bitmap::new(set.width_px(), set.height_px());
+        for (at, _) in self
+            .pixels
+            .iter()
+            .enumerate()
+            .filter(|&(_, &pixel)| pixel != 0)
+        {
+            skeleton.insert(at % self.stride - 1, at / self.stride - 1);
+        }
+        skeleton
+    }
+
     /// Thins `set`; what is left are the pixels that are not 0.
     fn thin(&mut self, set: &Bitmap) {
         self.fill(set);
-        loop {
-            let before = self.border.len();
-            let gone = self.half_round(0) + self.half_round(1);
-            if gone == 0 {
-                debug_assert_eq!(before, self.border.len());
-                break;
-            }
-        }
+        while self.half_round(0) + self.half_round(1) > 0 {}
         self.pixels.iter_mut().for_each(|pixel| *pixel &= FIGURE);
     }
 
@@ -191,23 +203,6 @@ fn around(at: usize, stride: usize) -> [usize; 8] {
         at + stride,
         at + stride + 1,
     ]
-}
-
-impl Skeleton {
-    /// The skeleton of `set` as a set.
-    pub(super) fn of(&mut self, set: &Bitmap) -> Bitmap {
-        self.thin(set);
-        let mut skeleton = Bitmap::new(set.width_px(), set.height_px());
-        for (at, _) in self
-            .pixels
-            .iter()
-            .enumerate()
-            .filter(|&(_, &pixel)| pixel != 0)
-        {
-            skeleton.insert(at % self.stride - 1, at / self.stride - 1);
-        }
-        skeleton
-    }
 }
 
 #[cfg(test)]

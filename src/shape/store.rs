@@ -180,8 +180,8 @@ fn check_figures(silhouette: &Silhouette, figures: &Figures) -> Result<(), Strin
         ("area_mm2", figures.area_mm2, silhouette.area_mm2()),
     ];
     for (key, stored, derived) in pairs {
-        // Written so that NaN fails.
-        if !((stored - derived).abs() <= 0.01 * derived) {
+        let near = (stored - derived).abs() <= 0.01 * derived;
+        if !near {
             return Err(format!(
                 "figures.{key} is {stored}, but the picture gives {derived:.4}: teach the shape again, or put back the \
                  picture and mm_per_px that belong to it"

@@ -17,6 +17,9 @@ pub struct Symmetry {
 /// The most turns that are looked for; what has more is as good as round.
 const MOST_TURNS: u32 = 36;
 
+/// How far edges of perfectly equal parts seem to be apart once they are taught, as a standard deviation.
+const EVEN_PX: f64 = 0.4;
+
 impl Symmetry {
     /// Every pose looks different.
     pub const NONE: Self = Self {
@@ -44,8 +47,8 @@ impl Symmetry {
         if rest < span { rest } else { 0.0 }
     }
 
-    /// Two poses look the same if both figures between them are at most 2 px, or 2 % of the radius in large pictures:
-    /// less than taught silhouettes of the same parts differ.
+    /// Two poses look the same if both figures between them are at most 2 px, or 2 % of the radius in large pictures; more
+    /// where good parts differ, since the mean of a few parts is then no more even than they are.
     pub(super) fn of(model: &Model) -> Self {
         let Some(mut same) = Same::new(model) else {
             return Self::NONE;
@@ -84,13 +87,16 @@ struct Same<'a> {
 impl<'a> Same<'a> {
     fn new(model: &'a Model) -> Option<Self> {
         let (region, runs) = model.silhouette().majority().to_region()?;
+        let uneven_px = (model.spread_px.powi(2) - EVEN_PX * EVEN_PX)
+            .max(0.0)
+            .sqrt();
         Some(Self {
             model,
             region,
             runs,
             overlay: Overlay::default(),
             gauge: Gauge::default(),
-            tolerance_px: (0.02 * model.radius_px).max(2.0),
+            tolerance_px: (2.0 + 6.0 * uneven_px).max(0.02 * model.radius_px),
         })
     }
 

@@ -52,7 +52,7 @@ impl Reel {
     /// With space for `most` rows that are needed at a time, and more, so that they seldom have to be moved.
     pub fn new(width: usize, height: usize, most: usize) -> Self {
         let stride = width.next_multiple_of(LINE);
-        let room = height.min(most + 192);
+        let room = height.min(most + 64);
         Self {
             pixels: Aligned::new(0, room * stride),
             stride,

@@ -4,23 +4,22 @@ use std::ops::Range;
 
 use super::buffer::Aligned;
 use super::element::Span;
-use super::kernels::{Extremum, Job, Level, Rows, RowsMut, suffix_stride};
+use super::kernels::{Cut, Extremum, Job, Level, Rows, RowsMut, memory_stride};
 
-/// Bands have about this many rows, so that what one step writes is still in the cache for the next.
-const BAND_ROWS: usize = 64;
+/// A step takes at most this many rows, so that what it writes is still in the cache for the next.
+pub(crate) const BAND_ROWS: usize = 64;
 
 /// The extremum over a vertical window around every pixel; what lies outside the picture is ignored.
 pub(crate) struct Slide {
     op: Extremum,
     span: Span,
+    cut: Cut,
     width_px: usize,
     height_px: usize,
-    /// The suffix extrema of the last block, and one row of the kernel's.
-    suffix: Aligned,
+    /// The kernel's memory of the blocks before.
+    memory: Aligned,
     /// The next block.
     next: usize,
-    /// How many blocks a picture has.
-    blocks: usize,
 }
 
 impl Slide {
@@ -32,27 +31,16 @@ impl Slide {
             before: span.before.min(reach),
             after: span.after.min(reach),
         };
+        let cut = Cut::of(span.size());
         Self {
             op,
             span,
+            cut,
             width_px,
             height_px,
-            suffix: Aligned::new(0, (span.size() + 1) * suffix_stride(width_px)),
+            memory: Aligned::new(0, cut.memory_rows() * memory_stride(width_px)),
             next: 0,
-            blocks: match height_px {
-                0 => 0,
-                _ => (height_px + span.after).div_ceil(span.size()),
-            },
         }
-    }
-
-    /// The most rows that one step yields.
-    pub fn most_rows(&self) -> usize {
-        self.blocks_per_step() * self.span.size()
-    }
-
-    fn blocks_per_step(&self) -> usize {
-        BAND_ROWS.div_ceil(self.span.size())
     }
 
     /// Begins a new picture.
@@ -60,21 +48,27 @@ impl Slide {
         self.next = 0;
     }
 
-    /// The next step, if the `ready` first rows of the picture are enough for it.
+    /// The next step of at most `most` blocks, if the `ready` first rows of the picture are enough for it.
     fn job(&self, ready: usize, most: usize) -> Option<Job> {
         let possible = match ready == self.height_px {
-            true => self.blocks,
-            false => ready / self.span.size(),
+            true => Job::blocks_of(self.height_px, self.span, self.cut),
+            false => ready / self.cut.length,
         };
         let count = possible.saturating_sub(self.next).min(most);
         (count > 0).then_some(Job {
             width_px: self.width_px,
             height_px: self.height_px,
             span: self.span,
+            cut: self.cut,
             src_top: 0,
             first: self.next,
             count,
         })
+    }
+
+    /// How many blocks a step takes at most.
+    fn blocks_per_step(&self) -> usize {
+        BAND_ROWS / self.cut.length
     }
 
     /// The rows that the next step will yield; `None` if it needs more than `ready` rows, or if there is none.
@@ -85,7 +79,7 @@ impl Slide {
 
     /// The first row that steps to come will read.
     pub fn needed(&self) -> usize {
-        self.next * self.span.size()
+        Job::first_row(self.next, self.span, self.cut)
     }
 
     /// Yields the [`Self::upcoming`] rows into `dst`, which begins with the first of them; `src` begins with row `src_top`,
@@ -106,11 +100,11 @@ impl Slide {
     }
 
     fn run(&mut self, level: Level, job: Job, src: Rows, dst: RowsMut) {
-        let suffix = RowsMut {
-            pixels: &mut self.suffix,
-            stride_px: suffix_stride(self.width_px),
+        let memory = RowsMut {
+            pixels: &mut self.memory,
+            stride_px: memory_stride(self.width_px),
         };
-        level.slide(self.op, job, src, dst, suffix);
+        level.slide(self.op, job, src, dst, memory);
         self.next += job.count;
     }
 }

@@ -18,7 +18,7 @@ use super::diagonals::Diagonals;
 use super::element::{Segments, Span};
 use super::kernels::{Extremum, Level, Rows, RowsMut};
 use super::plan::{Plan, Polarity};
-use super::slide::Slide;
+use super::slide::{BAND_ROWS, Slide};
 use crate::frames::Gray;
 
 /// The top-hat with its buffers.
@@ -56,7 +56,7 @@ impl TopHat {
         let [span_first, span_second] = spans(segments.down);
         let down_first = Slide::new(ops[0], span_first, width, height);
         let down_second = Slide::new(ops[1], span_second, width, height);
-        let live = down_first.most_rows() + STRIP + segments.down.size();
+        let live = BAND_ROWS + STRIP + segments.down.size();
         let steps = segments.diagonal;
         Self {
             level,
@@ -65,7 +65,7 @@ impl TopHat {
             height,
             across: Across::new(ops, spans(segments.across), width),
             middle: Reel::new(width, if steps > 0 { 0 } else { height }, live),
-            band: Aligned::new(0, width.next_multiple_of(LINE) * down_second.most_rows()),
+            band: Aligned::new(0, width.next_multiple_of(LINE) * BAND_ROWS),
             down_first,
             down_second,
             diagonals: (steps > 0).then(|| Diagonals::new(ops, steps, width, height)),
@@ -310,6 +310,22 @@ mod tests {
                 );
             }
             check(&picture, Element::Octagon { diameter_px: 31 });
+        }
+    }
+
+    /// Taller than the reel, with windows shorter and longer than a band.
+    #[test]
+    fn a_picture_of_many_bands() {
+        for height_px in [2, 63, 64, 65, 250] {
+            let picture = noise(33, 1_500, height_px);
+            let width_px = 2;
+            check(
+                &picture,
+                Element::Rectangle {
+                    width_px,
+                    height_px,
+                },
+            );
         }
     }
 

@@ -68,12 +68,19 @@ impl Bench {
         self.path(name).to_str().expect("UTF-8").to_owned()
     }
 
-    /// `a.toml` with some lines changed, under another name.
+    /// `a.toml` with some lines replaced, each told by how it begins, under another name.
     pub fn changed(&self, name: &str, changes: &[(&str, &str)]) -> String {
         let mut text = fs::read_to_string(self.path("a.toml")).unwrap();
-        for (from, to) in changes {
-            assert_eq!(text.matches(from).count(), 1, "{from}");
-            text = text.replace(from, to);
+        for (begin, line) in changes {
+            let (mut changed, mut hits) = (String::new(), 0);
+            for old in text.lines() {
+                let hit = old.starts_with(begin);
+                hits += usize::from(hit);
+                changed.push_str(if hit { line } else { old });
+                changed.push('\n');
+            }
+            assert_eq!(hits, 1, "{begin}");
+            text = changed;
         }
         fs::write(self.path(name), text).unwrap();
         self.text(name)

@@ -1,6 +1,7 @@
 """Talks to an example program that answers one JSON line, and raw bytes, for every JSON line it is given."""
 
 import json
+import os
 import pathlib
 import subprocess
 import tempfile
@@ -11,9 +12,10 @@ import numpy as np
 class Oracle:
     """A running oracle. Use it in a `with`; `ask` raises what the program reports as an error."""
 
-    def __init__(self, program):
+    def __init__(self, program, **environment):
         self.folder = tempfile.TemporaryDirectory()
-        self.process = subprocess.Popen([program], stdin=subprocess.PIPE, stdout=subprocess.PIPE)
+        environment = os.environ | environment
+        self.process = subprocess.Popen([program], stdin=subprocess.PIPE, stdout=subprocess.PIPE, env=environment)
         self.stored = 0
 
     def __enter__(self):

@@ -182,10 +182,9 @@ impl Request {
 
 fn levels(_: &Request, _: &mut Option<Timed>) -> Answer {
     let names: Vec<_> = Level::available().map(Level::name).collect();
-    Ok((
-        json!({"levels": names, "built_in": Level::built_in()}),
-        vec![],
-    ))
+    let chosen = Level::choose()?.name();
+    let answer = json!({"levels": names, "chosen": chosen, "built_in": Level::built_in()});
+    Ok((answer, vec![]))
 }
 
 fn eroded(request: &Request, of: fn(Gray<'_>, Element, Level) -> Vec<u8>) -> Answer {

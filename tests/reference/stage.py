@@ -251,6 +251,20 @@ def check_coins(oracle, checks, level):
     checks.same(flat["level"], 107, f"Otsu's level of the picture itself, 107: {level}")
 
 
+def check_forced_levels(program, checks, levels):
+    """BELTWRIGHT_KERNELS forces a level; a name that means none is an error."""
+    for level in levels:
+        with Oracle(program, BELTWRIGHT_KERNELS=level) as oracle:
+            checks.same(oracle.ask("levels")["chosen"], level, f"forced level {level}")
+    with Oracle(program, BELTWRIGHT_KERNELS="mmx") as oracle:
+        try:
+            oracle.ask("levels")
+        except RuntimeError as error:
+            checks.same("`mmx` is not known" in str(error), True, "an unknown level is refused by name")
+        else:
+            checks.same("accepted", "refused", "an unknown level")
+
+
 def main():
     cv2.setNumThreads(1)
     checks = Checks()
@@ -263,6 +277,7 @@ def main():
                     check(oracle, checks, level, name, picture)
             check_coins(oracle, checks, level)
             print(f"level {level}: {checks.passed - before} comparisons hold")
+        check_forced_levels(sys.argv[1], checks, answer["levels"])
         print(f"checked {len(answer['levels'])} of {answer['built_in']} levels against scikit-image {skimage.__version__}, "
               f"OpenCV {cv2.__version__}")
     print(f"{checks.passed} passed, {len(checks.failed)} failed")

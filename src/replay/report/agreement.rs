@@ -26,10 +26,7 @@ pub struct Tally {
 impl Tally {
     /// Counts every label once.
     pub fn of(labels: &[Label], score: &Score) -> Self {
-        let bad = labels
-            .iter()
-            .filter(|label| label.verdict == Verdict::Reject)
-            .count();
+        let bad = labels.iter().filter(|label| label.verdict == Verdict::Reject).count();
         let count = |hits: usize, of: usize| Count::new(hits as u64, of as u64);
         Self {
             misses: count(score.misses.len(), bad),
@@ -81,9 +78,7 @@ fn bounds(tally: &Tally) -> Markup {
             name.to_owned(),
             count.hits().to_string(),
             format!("{} {among}", count.of()),
-            count
-                .ratio()
-                .map_or_else(none, |ratio| percent(ratio, Rounding::Nearest)),
+            count.ratio().map_or_else(none, |ratio| percent(ratio, Rounding::Nearest)),
             percent(interval.low, Rounding::Down),
             percent(interval.high, Rounding::Up),
         ]
@@ -125,16 +120,7 @@ fn list(title: &str, found: &[Match], labels: &[Label], facts: &Facts<'_>) -> Ma
     if found.is_empty() {
         return html! {};
     }
-    let head = [
-        "part",
-        "along mm",
-        "across mm",
-        "label",
-        "note",
-        "verdict",
-        "missing mm",
-        "excess mm",
-    ];
+    let head = ["part", "along mm", "across mm", "label", "note", "verdict", "missing mm", "excess mm"];
     let rows: Vec<_> = found
         .iter()
         .take(LISTED)
@@ -185,12 +171,7 @@ pub fn verdict(case: &Case<'_>) -> String {
 
 /// Misses against false rejects when all limits are multiplied by the same factor.
 fn curve(facts: &Facts<'_>) -> Markup {
-    let severities = |good| {
-        facts
-            .side(good)
-            .filter_map(Case::severity)
-            .collect::<Vec<_>>()
-    };
+    let severities = |good| facts.side(good).filter_map(Case::severity).collect::<Vec<_>>();
     let (good, bad) = (severities(true), severities(false));
     let curve = Tradeoff::of(&good, &bad);
     let Some(area) = curve.area() else {
@@ -206,10 +187,7 @@ fn caption(curve: &Tradeoff, area: f64) -> String {
     let scaled = "All limits multiplied by one factor, from strict (left) to lax (right); the circle is where they stand.";
     // Shown to one part in ten thousand, and 1 only when it is 1.
     let area = (area * 1e4).floor() / 1e4;
-    format!(
-        "{scaled} Area under the curve of caught bad parts over false rejects: {area:.4} (1 is a clean separation, 0.5 a coin). {}",
-        clean(curve)
-    )
+    format!("{scaled} Area under the curve of caught bad parts over false rejects: {area:.4} (1 is a clean separation, 0.5 a coin). {}", clean(curve))
 }
 
 /// The factors at which nothing goes wrong.
@@ -230,10 +208,7 @@ fn clean(curve: &Tradeoff) -> String {
 fn draw_curve(curve: &Tradeoff) -> Markup {
     let most = |of: fn(&crate::stats::Point) -> usize| {
         // The ends, where everything or nothing is rejected, would squeeze the part that matters.
-        let near = curve
-            .points
-            .iter()
-            .filter(|point| (0.5..=2.0).contains(&point.limit));
+        let near = curve.points.iter().filter(|point| (0.5..=2.0).contains(&point.limit));
         near.map(of).max().unwrap_or(0).max(1) as f64
     };
     let shares = |count: f64, of: usize| count / of as f64 * 100.0;
@@ -252,12 +227,7 @@ fn draw_curve(curve: &Tradeoff) -> Markup {
     let mut path = String::new();
     for (k, point) in shown.enumerate() {
         let (x, y) = place(point);
-        path.push_str(&format!(
-            "{}{} {}",
-            if k == 0 { "M" } else { "L" },
-            n(x),
-            n(y)
-        ));
+        path.push_str(&format!("{}{} {}", if k == 0 { "M" } else { "L" }, n(x), n(y)));
     }
     let now = curve.points.iter().rev().find(|point| point.limit <= 1.0);
     let marks = html! {
@@ -270,9 +240,5 @@ fn draw_curve(curve: &Tradeoff) -> Markup {
             }
         }
     };
-    plot.draw(
-        "Misses against false rejects",
-        ("false rejects, % of good parts", "misses, % of bad parts"),
-        &marks,
-    )
+    plot.draw("Misses against false rejects", ("false rejects, % of good parts", "misses, % of bad parts"), &marks)
 }

@@ -40,13 +40,8 @@ pub fn belt(facts: &Facts<'_>, unseen: &[Stretch]) -> Markup {
 
 /// From the first thing on the belt to the last.
 fn whole(facts: &Facts<'_>, unseen: &[Stretch]) -> Option<Stretch> {
-    let parts = facts
-        .cases
-        .iter()
-        .map(|case| (case.part.extent.lead_mm, case.part.extent.trail_mm));
-    let stretches = unseen
-        .iter()
-        .map(|stretch| (stretch.from_mm, stretch.to_mm));
+    let parts = facts.cases.iter().map(|case| (case.part.extent.lead_mm, case.part.extent.trail_mm));
+    let stretches = unseen.iter().map(|stretch| (stretch.from_mm, stretch.to_mm));
     parts
         .chain(stretches)
         .reduce(|a, b| (a.0.min(b.0), a.1.max(b.1)))
@@ -86,9 +81,7 @@ impl Map {
     }
 
     fn rows(&self) -> f64 {
-        ((self.whole.to_mm - self.whole.from_mm) / self.row_mm)
-            .ceil()
-            .max(1.0)
+        ((self.whole.to_mm - self.whole.from_mm) / self.row_mm).ceil().max(1.0)
     }
 
     fn draw(&self, row: usize, facts: &Facts<'_>, unseen: &[Stretch]) -> Markup {
@@ -98,8 +91,7 @@ impl Map {
         let x = |along_mm: f64| (along_mm - from_mm) * scale;
         let lies = |from: f64, to: f64| from < to_mm && to > from_mm;
         let step = super::chart::round_step(self.row_mm / 9.0);
-        let ticks = ((from_mm / step).ceil() as i64..=(to_mm / step).floor() as i64)
-            .map(|k| k as f64 * step);
+        let ticks = ((from_mm / step).ceil() as i64..=(to_mm / step).floor() as i64).map(|k| k as f64 * step);
         html! {
             svg viewBox={ "0 0 " (n(WIDTH)) " " (n(HEIGHT + 18.0)) } role="img"
                 aria-label={ "Belt from " (n(from_mm)) " to " (n(to_mm)) " mm" } {
@@ -131,14 +123,7 @@ fn part(case: &Case<'_>, place: impl Fn(&Extent) -> [f64; 4]) -> Markup {
     let rejected = part.verdict == Verdict::Reject;
     let cross = format!(
         "M{} {}L{} {}M{} {}L{} {}",
-        n(left),
-        n(top),
-        n(right),
-        n(bottom),
-        n(left),
-        n(bottom),
-        n(right),
-        n(top)
+        n(left), n(top), n(right), n(bottom), n(left), n(bottom), n(right), n(top)
     );
     html! {
         g {
@@ -188,18 +173,8 @@ fn pieces(whole: Stretch, facts: &Facts<'_>, unseen: &[Stretch]) -> Vec<Piece> {
 /// Too long for a map: kept parts upwards, rejected ones downwards, and where belt was not seen.
 fn summary(whole: Stretch, facts: &Facts<'_>, unseen: &[Stretch]) -> Markup {
     let pieces = pieces(whole, facts, unseen);
-    let most_kept = pieces
-        .iter()
-        .map(|piece| piece.kept)
-        .max()
-        .unwrap_or(0)
-        .max(1) as f64;
-    let most_rejected = pieces
-        .iter()
-        .map(|piece| piece.rejected)
-        .max()
-        .unwrap_or(0)
-        .max(1) as f64;
+    let most_kept = pieces.iter().map(|piece| piece.kept).max().unwrap_or(0).max(1) as f64;
+    let most_rejected = pieces.iter().map(|piece| piece.rejected).max().unwrap_or(0).max(1) as f64;
     let metres = (whole.from_mm / 1e3, whole.to_mm / 1e3);
     let plot = super::chart::Plot::new(WIDTH, 300.0, metres, (-1.0, 1.0));
     let wide = (plot.x.end - plot.x.start) / COLUMNS as f64;

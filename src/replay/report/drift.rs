@@ -64,30 +64,18 @@ fn medians(dots: &[Dot]) -> Vec<(f64, f64)> {
         margins[((dot.seconds / piece) as usize).min(PIECES - 1)].push(dot.margin_mm);
     }
     let middle = |k: usize| (k as f64 + 0.5) * piece;
-    let enough = margins
-        .iter_mut()
-        .enumerate()
-        .filter(|(_, margins)| margins.len() >= LEAST);
-    enough
-        .filter_map(|(k, margins)| Some((middle(k), median(margins)?)))
-        .collect()
+    let enough = margins.iter_mut().enumerate().filter(|(_, margins)| margins.len() >= LEAST);
+    enough.filter_map(|(k, margins)| Some((middle(k), median(margins)?))).collect()
 }
 
 fn trend(dots: &[Dot], good: &str) -> String {
-    let mut margins: Vec<f64> = dots
-        .iter()
-        .filter(|dot| dot.good)
-        .map(|dot| dot.margin_mm)
-        .collect();
+    let mut margins: Vec<f64> = dots.iter().filter(|dot| dot.good).map(|dot| dot.margin_mm).collect();
     let fifth = margins.len() / 5;
     if fifth < LEAST {
         return format!("Too few {good} parts to tell a trend.");
     }
     let last = margins.len() - fifth;
-    let (first, last) = (
-        median(&mut margins[..fifth].to_vec()),
-        median(&mut margins[last..]),
-    );
+    let (first, last) = (median(&mut margins[..fifth].to_vec()), median(&mut margins[last..]));
     let (first, last) = (first.unwrap_or_default(), last.unwrap_or_default());
     format!(
         "Median margin of {good} parts: {} mm in the first fifth, {} mm in the last.",
@@ -101,12 +89,7 @@ fn draw(dots: &[Dot]) -> Markup {
     let most = dots.iter().map(|dot| dot.margin_mm).fold(0.0, f64::max);
     let least = dots.iter().map(|dot| dot.margin_mm).fold(0.0, f64::min);
     // Broken parts are far beyond: they must not squeeze the good ones.
-    let plot = Plot::new(
-        900.0,
-        300.0,
-        (0.0, end),
-        (least.max(-1.5 * most.max(0.1)), most.max(0.1) * 1.05),
-    );
+    let plot = Plot::new(900.0, 300.0, (0.0, end), (least.max(-1.5 * most.max(0.1)), most.max(0.1) * 1.05));
     let line: Vec<_> = medians(dots)
         .iter()
         .map(|(seconds, margin)| format!("{} {}", n(plot.x.at(*seconds)), n(plot.y.at(*margin))))
@@ -120,11 +103,7 @@ fn draw(dots: &[Dot]) -> Markup {
         (plot.mark_y(0.0, "limit"))
         @if line.len() > 1 { path.median d={ "M" (line.join("L")) } {} }
     };
-    plot.draw(
-        "Margin over time",
-        ("seconds since the first part", "margin in mm"),
-        &marks,
-    )
+    plot.draw("Margin over time", ("seconds since the first part", "margin in mm"), &marks)
 }
 
 fn mark(plot: &Plot, dot: &Dot) -> Markup {
@@ -141,8 +120,7 @@ fn columns(plot: &Plot, dots: &[Dot]) -> Markup {
         let (low, high) = end.unwrap_or((dot.margin_mm, dot.margin_mm));
         *end = Some((low.min(dot.margin_mm), high.max(dot.margin_mm)));
     }
-    let x =
-        |k: usize| plot.x.start + (k as f64 + 0.5) / COLUMNS as f64 * (plot.x.end - plot.x.start);
+    let x = |k: usize| plot.x.start + (k as f64 + 0.5) / COLUMNS as f64 * (plot.x.end - plot.x.start);
     html! {
         @for (k, [good, bad]) in ends.iter().enumerate() {
             @if let Some((low, high)) = good {
@@ -169,10 +147,7 @@ mod tests {
     #[test]
     fn a_margin_that_shrinks_is_told() {
         let text = trend(&dots(100, |k| 2.0 - k as f64 / 100.0), "good");
-        assert!(
-            text.contains("1.90 mm in the first fifth, 1.10 mm in the last"),
-            "{text}"
-        );
+        assert!(text.contains("1.90 mm in the first fifth, 1.10 mm in the last"), "{text}");
         assert!(trend(&dots(10, |_| 1.0), "good").starts_with("Too few"));
     }
 

@@ -54,11 +54,7 @@ fn nearest<'f>(facts: &'f Facts<'_>) -> Vec<&'f Case<'f>> {
     near.into_iter().map(|(_, case)| case).collect()
 }
 
-fn sheet(
-    cases: &[&Case<'_>],
-    most: usize,
-    album: &mut Album<'_>,
-) -> Result<Markup, RecordingError> {
+fn sheet(cases: &[&Case<'_>], most: usize, album: &mut Album<'_>) -> Result<Markup, RecordingError> {
     let mut shown = Vec::new();
     for case in cases.iter().take(most) {
         if let Some(picture) = album.part(case.part)? {
@@ -101,11 +97,7 @@ fn card(case: &Case<'_>, picture: &Picture) -> Markup {
 }
 
 fn describe(case: &Case<'_>) -> String {
-    format!(
-        "Part {} with the taught outline, what is missing and what is too much: {}",
-        case.part.number,
-        verdict(case)
-    )
+    format!("Part {} with the taught outline, what is missing and what is too much: {}", case.part.number, verdict(case))
 }
 
 /// A picture of the page.

@@ -80,9 +80,7 @@ fn shrunk(image: DynamicImage) -> DynamicImage {
     let share = f64::from(WIDEST_PX) / f64::from(longest);
     let [width, height] = [width, height].map(|px| ((f64::from(px) * share).round() as u32).max(1));
     match image {
-        DynamicImage::ImageRgb8(rgb) => {
-            imageops::resize(&rgb, width, height, Resize::Triangle).into()
-        }
+        DynamicImage::ImageRgb8(rgb) => imageops::resize(&rgb, width, height, Resize::Triangle).into(),
         other => imageops::resize(&other.to_luma8(), width, height, Resize::Triangle).into(),
     }
 }

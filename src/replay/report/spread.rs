@@ -34,14 +34,9 @@ pub fn spread(facts: &Facts<'_>) -> Markup {
     let [good, bad] = facts.side_names();
     let met = |shape: usize| {
         let of_it = |figures: Figures| figures.shape == shape;
-        facts
-            .cases
-            .iter()
-            .any(|case| case.figures.is_some_and(of_it))
+        facts.cases.iter().any(|case| case.figures.is_some_and(of_it))
     };
-    let shapes: Vec<usize> = (0..facts.settings.shapes.len())
-        .filter(|&shape| met(shape))
-        .collect();
+    let shapes: Vec<usize> = (0..facts.settings.shapes.len()).filter(|&shape| met(shape)).collect();
     if shapes.is_empty() {
         return html! { p { "No part was seen whole." } };
     }
@@ -73,11 +68,7 @@ fn chart(facts: &Facts<'_>, shape: usize, which: &Figure) -> Markup {
         .next()
         .unwrap_or_default();
     let drawing = draw(which.name, &sides, facts.side_names(), limit_mm);
-    figure(
-        &drawing,
-        &caption(&sides, facts.side_names(), which.name),
-        false,
-    )
+    figure(&drawing, &caption(&sides, facts.side_names(), which.name), false)
 }
 
 /// Where the middle and the far end of each side lie.
@@ -88,12 +79,7 @@ fn caption(sides: &[Vec<f64>; 2], names: [&str; 2], figure: &str) -> String {
         let count = counted(values.len(), "part", "parts");
         match (values.first(), values.get(values.len() / 2), values.last()) {
             (Some(first), Some(middle), Some(last)) => {
-                format!(
-                    "{name}: {count}, {} to {} mm, median {}",
-                    mm(*first),
-                    mm(*last),
-                    mm(*middle)
-                )
+                format!("{name}: {count}, {} to {} mm, median {}", mm(*first), mm(*last), mm(*middle))
             }
             _ => format!("{name}: no part"),
         }
@@ -130,10 +116,7 @@ fn draw(name: &str, sides: &[Vec<f64>; 2], names: [&str; 2], limit_mm: f64) -> M
         (0.0, "0".to_owned()),
         (-1.0, most[1].to_string()),
     ];
-    let beyond = sides
-        .iter()
-        .flatten()
-        .any(|value| *value >= width * BINS as f64);
+    let beyond = sides.iter().flatten().any(|value| *value >= width * BINS as f64);
     let marks = html! {
         @for (side, counts) in counts.iter().enumerate() {
             @for (bin, &count) in counts.iter().enumerate().filter(|(_, count)| **count > 0) {
@@ -147,11 +130,7 @@ fn draw(name: &str, sides: &[Vec<f64>; 2], names: [&str; 2], limit_mm: f64) -> M
         }
         (plot.mark_x(limit_mm, &format!("limit {} mm", mm(limit_mm))))
     };
-    let title = if beyond {
-        format!("{name} (the last bar: that and more)")
-    } else {
-        name.to_owned()
-    };
+    let title = if beyond { format!("{name} (the last bar: that and more)") } else { name.to_owned() };
     plot.draw_with(
         &format!("Distribution of {name}"),
         (&title, "parts"),
@@ -189,10 +168,7 @@ mod tests {
         let mut good = vec![0.3; 100];
         good.push(80.0);
         let width = bin_width(&[good, vec![]], 2.0);
-        assert!(
-            width * BINS as f64 > 2.0 && width * (BINS as f64) < 6.0,
-            "{width}"
-        );
+        assert!(width * BINS as f64 > 2.0 && width * (BINS as f64) < 6.0, "{width}");
         assert!(bin_width(&[vec![], vec![]], 0.0) > 0.0);
     }
 }

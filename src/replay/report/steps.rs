@@ -39,15 +39,9 @@ fn frame(name: &str, picture: &Picture, case: &Case<'_>) -> Markup {
 /// Up to three parts, each for a reason.
 fn chosen<'f>(facts: &'f Facts<'_>) -> Vec<(&'static str, &'f Case<'f>)> {
     let with = |verdict: Verdict| {
-        let cases = facts
-            .cases
-            .iter()
-            .filter(move |case| case.part.verdict == verdict);
-        let finite =
-            |case: &&Case<'_>| Some(case.severity()?).filter(|severity| severity.is_finite());
-        let mut cases: Vec<_> = cases
-            .filter_map(|case| Some((finite(&case)?, case)))
-            .collect();
+        let cases = facts.cases.iter().filter(move |case| case.part.verdict == verdict);
+        let finite = |case: &&Case<'_>| Some(case.severity()?).filter(|severity| severity.is_finite());
+        let mut cases: Vec<_> = cases.filter_map(|case| Some((finite(&case)?, case))).collect();
         cases.sort_by(|a, b| a.0.total_cmp(&b.0));
         cases.into_iter().map(|(_, case)| case).collect::<Vec<_>>()
     };
@@ -57,13 +51,7 @@ fn chosen<'f>(facts: &'f Facts<'_>) -> Vec<(&'static str, &'f Case<'f>)> {
     let named = [
         ("An ordinary good part", ordinary),
         ("The kept part nearest to a limit", nearest),
-        (
-            "The rejected part farthest beyond its limit",
-            rejected.last().copied(),
-        ),
+        ("The rejected part farthest beyond its limit", rejected.last().copied()),
     ];
-    named
-        .into_iter()
-        .filter_map(|(why, case)| Some((why, case?)))
-        .collect()
+    named.into_iter().filter_map(|(why, case)| Some((why, case?))).collect()
 }

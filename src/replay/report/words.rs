@@ -112,11 +112,7 @@ pub const FALSE_REJECTS: Nouns = Nouns {
 /// Hundredths of a millimetre; zero has no sign.
 pub fn mm(value: f64) -> String {
     let text = format!("{value:.2}");
-    if text == "-0.00" {
-        "0.00".to_owned()
-    } else {
-        text
-    }
+    if text == "-0.00" { "0.00".to_owned() } else { text }
 }
 
 /// `1 part`, `2 parts`.
@@ -157,10 +153,7 @@ mod tests {
             "no bad part at all, so nothing can be said"
         );
         let rule = MISSES.in_the_head(Count::new(0, 300)).unwrap();
-        assert!(
-            rule.contains("3 / 300 is 1.0 %") && rule.contains("exactly 1.0 %"),
-            "{rule}"
-        );
+        assert!(rule.contains("3 / 300 is 1.0 %") && rule.contains("exactly 1.0 %"), "{rule}");
         assert_eq!(MISSES.in_the_head(Count::new(1, 300)), None);
     }
 }

@@ -7,7 +7,7 @@
 use std::arch::x86_64::*;
 
 use super::view::{View, ViewMut};
-use super::{Block, Extremum, Job, Rows, RowsMut, scalar};
+use super::{Block, Cut, Extremum, Job, Rows, RowsMut, scalar};
 
 /// Bytes of a vector.
 const LANE: usize = 32;

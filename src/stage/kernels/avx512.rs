@@ -4,7 +4,7 @@
 use std::arch::x86_64::*;
 
 use super::view::{View, ViewMut};
-use super::{Block, Extremum, Job, Rows, RowsMut, avx2, scalar};
+use super::{Block, Cut, Extremum, Job, Rows, RowsMut, avx2, scalar};
 
 /// Bytes of a vector.
 const LANE: usize = 64;

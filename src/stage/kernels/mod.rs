@@ -8,6 +8,7 @@
 mod avx2;
 #[cfg(target_arch = "x86_64")]
 mod avx512;
+mod job;
 mod scalar;
 #[cfg(test)]
 mod tests;
@@ -15,18 +16,13 @@ mod view;
 #[cfg(target_arch = "x86_64")]
 mod wide;
 
-use std::ops::Range;
-
 use thiserror::Error;
 
-use super::element::Span;
+use job::Block;
+pub(crate) use job::{Cut, Job};
 
 /// The environment variable that forces a level.
 const FORCE: &str = "BELTWRIGHT_KERNELS";
-
-/// Bytes of the nearest data cache that a kernel may count on.
-#[cfg(target_arch = "x86_64")]
-const NEAREST_CACHE: usize = 40 * 1024;
 
 /// Which of two values wins.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -83,79 +79,34 @@ impl RowsMut<'_> {
         }
     }
 
+    /// The first `rows` rows, and the others.
+    pub fn split(&mut self, rows: usize) -> (RowsMut<'_>, RowsMut<'_>) {
+        let stride_px = self.stride_px;
+        let (first, second) = self.pixels.split_at_mut(rows * stride_px);
+        let first = RowsMut {
+            pixels: first,
+            stride_px,
+        };
+        (
+            first,
+            RowsMut {
+                pixels: second,
+                stride_px,
+            },
+        )
+    }
+
+    /// The same rows, to read only.
+    pub fn read(&self) -> Rows<'_> {
+        Rows {
+            pixels: self.pixels,
+            stride_px: self.stride_px,
+        }
+    }
+
     /// `width` pixels of row `y`.
     pub fn row(&mut self, y: usize, width: usize) -> &mut [u8] {
         &mut self.pixels[y * self.stride_px..][..width]
-    }
-}
-
-/// A running extremum down the columns of a picture, or some blocks of it (see [`Level::slide`]).
-#[derive(Clone, Copy, Debug)]
-pub(crate) struct Job {
-    /// Columns.
-    pub width_px: usize,
-    /// Rows of the picture.
-    pub height_px: usize,
-    /// The window.
-    pub span: Span,
-    /// The picture's row with which the source begins.
-    pub src_top: usize,
-    /// The first block.
-    pub first: usize,
-    /// How many blocks.
-    pub count: usize,
-}
-
-/// One block of a [`Job`]: as many rows as the window is long.
-#[derive(Clone, Copy, Debug)]
-struct Block {
-    /// Columns.
-    width_px: usize,
-    /// Rows of a whole block.
-    size: usize,
-    /// Its first row in the source.
-    src: usize,
-    /// Its rows inside the picture.
-    rows_in: usize,
-    /// Its first rows whose windows are centred above the picture and which yield nothing.
-    skip: usize,
-    /// The row after the last one that yields something.
-    end: usize,
-    /// Where the first yielded row goes in the job's output.
-    out: usize,
-    /// Whether there is no block before it, and so no suffix.
-    is_first: bool,
-    /// Whether no block comes after it, so that nobody needs its suffix.
-    is_last: bool,
-}
-
-impl Job {
-    /// The rows that come out: row `y` does when the last row of its window has gone in.
-    pub fn rows_out(&self) -> Range<usize> {
-        let clip = |j: usize| j.saturating_sub(self.span.after).min(self.height_px);
-        let size = self.span.size();
-        clip(self.first * size)..clip((self.first + self.count) * size)
-    }
-
-    fn blocks(self) -> impl Iterator<Item = Block> {
-        let size = self.span.size();
-        let start = self.rows_out().start;
-        (self.first..self.first + self.count).map(move |index| {
-            let top = index * size;
-            Block {
-                width_px: self.width_px,
-                size,
-                src: top - self.src_top,
-                rows_in: self.height_px.saturating_sub(top).min(size),
-                skip: self.span.after.saturating_sub(top).min(size),
-                end: (self.height_px + self.span.after)
-                    .saturating_sub(top)
-                    .min(size),
-                out: top.saturating_sub(self.span.after).saturating_sub(start),
-                is_first: index == 0,
-                is_last: top + size >= self.height_px + self.span.after,
-            }
-        })
     }
 }
 
@@ -297,16 +248,13 @@ impl Level {
         self.0.name()
     }
 
-    /// Some blocks of the running extremum down the columns after van Herk 1992 and Gil & Werman 1993: three comparisons
-    /// a pixel whatever the window's length.
+    /// Some blocks of the running extremum down the columns (see [`job`] for the method).
     ///
-    /// `src` begins with row `src_top`, `dst` at the first row that comes out. With `suffix[o]` the extremum of
-    /// rows `o..` of the *previous* block, row `o` of a block ends the window whose extremum is that of `suffix[o + 1]` and
-    /// of rows `0..=o` of this block. Afterwards `suffix` holds that of the last block, arranged as the kernel likes, unless
-    /// it was the picture's last; before the picture's first block it is not read. It has one row more than the window, for
-    /// the kernel's own use, and rows of [`suffix_stride`] bytes. Rows outside the picture are ignored.
-    pub(crate) fn slide(self, op: Extremum, job: Job, src: Rows, dst: RowsMut, suffix: RowsMut) {
-        dispatch!(self, slide(op, job, src, dst, suffix));
+    /// `src` begins with row `src_top`, which must not come after [`Job::first_row`]; `dst` begins with the first row that
+    /// comes out. Rows outside the picture are ignored. `memory` has [`Cut::memory_rows`] rows of [`memory_stride`] bytes,
+    /// which the kernel arranges as it likes and which go from job to job; the first block of a picture does not read them.
+    pub(crate) fn slide(self, op: Extremum, job: Job, src: Rows, dst: RowsMut, memory: RowsMut) {
+        dispatch!(self, slide(op, job, src, dst, memory));
     }
 
     /// Turns a picture over its main diagonal: `height` rows of `width` pixels in `src` become columns of `dst`.
@@ -331,8 +279,8 @@ impl Level {
     }
 }
 
-/// The length of a row of the suffix buffer for pictures of this width: whole vectors of every level.
-pub(crate) fn suffix_stride(width_px: usize) -> usize {
+/// The length of a row of a kernel's memory for pictures of this width: whole vectors of every level.
+pub(crate) fn memory_stride(width_px: usize) -> usize {
     width_px.next_multiple_of(64)
 }
 

@@ -2,49 +2,78 @@
 
 use super::{Block, Extremum, Job, Rows, RowsMut};
 
-/// See [`super::Level::slide`].
-pub(super) fn slide(op: Extremum, job: Job, src: Rows, mut dst: RowsMut, mut suffix: RowsMut) {
+/// See [`super::Level::slide`]. The memory holds the suffix, then the extrema of the blocks, then those of their tails.
+pub(super) fn slide(op: Extremum, job: Job, src: Rows, mut dst: RowsMut, mut memory: RowsMut) {
+    let (width, cut) = (job.width_px, job.cut);
+    let (mut suffix, mut blocks) = memory.split(cut.length);
+    let (mut blocks, mut tails) = blocks.split(cut.remembered());
     for block in job.blocks() {
-        let src = src.from(block.src);
-        yield_rows(op, block, src, dst.from(block.out), &mut suffix);
-        extend_suffix(op, block, src, &mut suffix);
-    }
-}
-
-/// The forward half of a block: the running prefix, joined with the previous block's suffix.
-fn yield_rows(op: Extremum, block: Block, src: Rows, mut dst: RowsMut, suffix: &mut RowsMut) {
-    let width = block.width_px;
-    let stride = suffix.stride_px;
-    let (suffix, prefix) = suffix.pixels.split_at_mut(block.size * stride);
-    let prefix = &mut prefix[..width];
-    prefix.fill(op.neutral());
-    for o in 0..block.end {
-        if o < block.rows_in {
-            join(op, prefix, src.row(o, width));
-        }
-        if o >= block.skip {
-            let out = dst.row(o - block.skip, width);
-            out.copy_from_slice(prefix);
-            if o + 1 < block.size && !block.is_first {
-                join(op, out, &suffix[(o + 1) * stride..][..width]);
+        if block.index == 0 {
+            for i in 0..cut.remembered() {
+                blocks.row(i, width).fill(op.neutral());
+                tails.row(i, width).fill(op.neutral());
             }
         }
+        // The oldest block that is remembered gives way to this one.
+        let slot = block.index % cut.remembered();
+        let last = suffix.row(cut.length - 1, width);
+        last.copy_from_slice(tails.row(slot, width));
+        for i in (0..cut.remembered()).filter(|&i| i != slot) {
+            join(op, last, blocks.row(i, width));
+        }
+        make_suffix(op, block, src.from(block.back), &mut suffix);
+        let (prefix, tail) = (blocks.row(slot, width), tails.row(slot, width));
+        yield_rows(
+            op,
+            block,
+            src.from(block.front),
+            dst.from(block.out),
+            suffix.read(),
+            prefix,
+        );
+        tail.fill(op.neutral());
+        for o in (cut.length - cut.tail..cut.length).filter(|&o| o < block.front_rows) {
+            join(op, tail, src.from(block.front).row(o, width));
+        }
     }
 }
 
-/// The backward half: the suffix that the next block needs.
-fn extend_suffix(op: Extremum, block: Block, src: Rows, suffix: &mut RowsMut) {
-    let (width, stride) = (block.width_px, suffix.stride_px);
-    for o in (0..block.size).rev() {
-        let (this, below) = suffix.pixels[o * stride..].split_at_mut(stride);
-        let this = &mut this[..width];
-        if o + 1 < block.size {
-            this.copy_from_slice(&below[..width]);
-        } else {
-            this.fill(op.neutral());
+/// Row `o` becomes the extremum of rows `o..` of those in which windows begin, and of the common rows, which are in the
+/// last row at first.
+fn make_suffix(op: Extremum, block: Block, back: Rows, suffix: &mut RowsMut) {
+    let (above, below) = block.back_rows;
+    for o in (0..block.cut.length).rev() {
+        let mut rows = suffix.from(o);
+        let (mut this, mut next) = rows.split(1);
+        let this = this.row(0, block.width_px);
+        if o + 1 < block.cut.length {
+            this.copy_from_slice(next.row(0, block.width_px));
         }
-        if o < block.rows_in {
-            join(op, this, src.row(o, width));
+        if (above..below).contains(&o) {
+            join(op, this, back.row(o - above, block.width_px));
+        }
+    }
+}
+
+/// The running prefix of the block, joined with the suffix. The prefix is left as the extremum of the whole block.
+fn yield_rows(
+    op: Extremum,
+    block: Block,
+    front: Rows,
+    mut dst: RowsMut,
+    suffix: Rows,
+    prefix: &mut [u8],
+) {
+    let (from, to) = block.yields;
+    prefix.fill(op.neutral());
+    for o in 0..block.cut.length {
+        if o < block.front_rows {
+            join(op, prefix, front.row(o, block.width_px));
+        }
+        if (from..to).contains(&o) {
+            let out = dst.row(o - from, block.width_px);
+            out.copy_from_slice(prefix);
+            join(op, out, suffix.row(o, block.width_px));
         }
     }
 }

@@ -1,7 +1,7 @@
 //! What every kernel has to do, stamped into each kernel's file: all widths from 0 to twice the widest tile and one more,
 //! starts that are not aligned, rows further apart than they are wide, and bytes around the output that must not change.
 
-use super::{Block, Extremum, Job, Level, Rows, RowsMut, suffix_stride};
+use super::{Cut, Extremum, Job, Level, Rows, RowsMut, memory_stride};
 use crate::stage::element::Span;
 
 /// The widest tile of any level, in bytes.
@@ -111,6 +111,17 @@ impl Source {
         }
     }
 
+    /// Rows `top..end`, and nothing behind them.
+    fn rows_between(&self, top: usize, end: usize, width: usize) -> Rows<'_> {
+        let last = self.start + end.saturating_sub(1) * self.stride + width;
+        Rows {
+            pixels: self.bytes[..last]
+                .get(self.start + top * self.stride..)
+                .unwrap_or(&[]),
+            stride_px: self.stride,
+        }
+    }
+
     fn at(&self, x: usize, y: usize) -> u8 {
         self.bytes[self.start + y * self.stride + x]
     }
@@ -135,6 +146,11 @@ impl Target {
             width,
             height,
         }
+    }
+
+    /// Forgets what was written.
+    fn clear(&mut self) {
+        self.bytes.fill(MARK);
     }
 
     /// The picture, and nothing behind its last row.
@@ -164,19 +180,21 @@ impl Target {
 
 /// A whole picture as one job.
 fn whole(width_px: usize, height_px: usize, span: Span) -> Job {
+    let cut = Cut::of(span.size());
     Job {
         width_px,
         height_px,
         span,
+        cut,
         src_top: 0,
         first: 0,
-        count: (height_px + span.after).div_ceil(span.size()),
+        count: Job::blocks_of(height_px, span, cut),
     }
 }
 
-/// A suffix buffer; what it holds at first does not matter.
-fn suffix(width: usize, span: Span) -> Vec<u8> {
-    vec![MARK; (span.size() + 1) * suffix_stride(width)]
+/// A kernel's memory for a job; what it holds at first does not matter.
+fn memory(job: &Job) -> Vec<u8> {
+    vec![MARK; job.cut.memory_rows() * memory_stride(job.width_px)]
 }
 
 /// The extremum over a window by its definition.
@@ -205,18 +223,8 @@ pub(super) fn slide(level: Level) {
             let source = Source::new(width, height, 7 * width + i);
             for op in [Extremum::Least, Extremum::Greatest] {
                 let mut target = Target::new(width, height, 3 * width + i);
-                let mut suffix = suffix(width, span);
-                let suffix = RowsMut {
-                    pixels: &mut suffix,
-                    stride_px: suffix_stride(width),
-                };
-                level.slide(
-                    op,
-                    whole(width, height, span),
-                    source.rows(),
-                    target.rows(),
-                    suffix,
-                );
+                let job = whole(width, height, span);
+                slide_by(level, op, job.count.max(1), job, &source, &mut target);
                 let what = format!("{op:?} {width}x{height} {span:?}");
                 target.check(&what, |x, y| extremum(op, &source, height, span, x, y));
             }
@@ -225,48 +233,59 @@ pub(super) fn slide(level: Level) {
 }
 
 pub(super) fn slide_in_steps(level: Level) {
-    let (op, height) = (Extremum::Least, 40);
-    for width in [31, 32, 65, 128, 200] {
-        for span in [
-            Span {
-                before: 3,
-                after: 2,
-            },
-            Span {
-                before: 0,
-                after: 6,
-            },
-            Span {
-                before: 20,
-                after: 1,
-            },
-        ] {
+    let short = [(3, 2), (0, 6), (20, 1)].map(|reach| (40, reach));
+    // These have rows in common: whole blocks, tails, both, or a block and no tail.
+    let long = [
+        (100, 100),
+        (40, 60),
+        (120, 120),
+        (0, 199),
+        (70, 0),
+        (64, 65),
+        (250, 250),
+    ]
+    .map(|reach| (260, reach));
+    for (height, (before, after)) in short.into_iter().chain(long) {
+        for width in [31, 32, 65, 128, 300] {
+            let (op, span) = (Extremum::Least, Span { before, after });
             let source = Source::new(width, height, width);
             let mut target = Target::new(width, height, width);
-            let mut suffix = suffix(width, span);
             let all = whole(width, height, span);
-            for first in (0..all.count).step_by(2) {
-                let job = Job {
-                    first,
-                    count: 2.min(all.count - first),
-                    src_top: (first * span.size()).min(height),
-                    ..all
-                };
-                let mut dst = target.rows();
-                let suffix = RowsMut {
-                    pixels: &mut suffix,
-                    stride_px: suffix_stride(width),
-                };
-                level.slide(
-                    op,
-                    job,
-                    source.rows().from(job.src_top),
-                    dst.from(job.rows_out().start),
-                    suffix,
-                );
+            for step in [1, 2, 5, 100] {
+                target.clear();
+                slide_by(level, op, step, all, &source, &mut target);
+                target.check("in steps", |x, y| extremum(op, &source, height, span, x, y));
             }
-            target.check("in steps", |x, y| extremum(op, &source, height, span, x, y));
         }
+    }
+}
+
+/// Slides `step` blocks at a time; the source begins as late as it may and ends as early.
+fn slide_by(
+    level: Level,
+    op: Extremum,
+    step: usize,
+    all: Job,
+    source: &Source,
+    target: &mut Target,
+) {
+    let mut memory = memory(&all);
+    for first in (0..all.count).step_by(step) {
+        let count = step.min(all.count - first);
+        let job = Job {
+            first,
+            count,
+            src_top: Job::first_row(first, all.span, all.cut).min(all.height_px),
+            ..all
+        };
+        let end = ((first + count) * all.cut.length).min(all.height_px);
+        let src = source.rows_between(job.src_top, end, all.width_px);
+        let mut dst = target.rows();
+        let memory = RowsMut {
+            pixels: &mut memory,
+            stride_px: memory_stride(all.width_px),
+        };
+        level.slide(op, job, src, dst.from(job.rows_out().start), memory);
     }
 }
 
@@ -327,22 +346,6 @@ fn check_bits(bits: &[u64], width: usize, expected: impl Fn(usize) -> bool) {
     for x in 0..bits.len() * 64 {
         let set = bits[x / 64] >> (x % 64) & 1 == 1;
         assert_eq!(set, x < width && expected(x), "bit {x} of {width}");
-    }
-}
-
-#[test]
-fn blocks_yield_every_row_once() {
-    for height in 1..40 {
-        for (before, after) in [(0, 0), (1, 1), (5, 0), (0, 5), (7, 6)] {
-            let span = Span {
-                before: before.min(height - 1),
-                after: after.min(height - 1),
-            };
-            let job = whole(1, height, span);
-            let rows: usize = job.blocks().map(|Block { skip, end, .. }| end - skip).sum();
-            assert_eq!((rows, job.rows_out()), (height, 0..height));
-            assert_eq!(job.blocks().filter(|block| block.is_last).count(), 1);
-        }
     }
 }
 

@@ -2,7 +2,7 @@
 //! supplies `load`, `store` and the names of its instructions.
 //!
 //! Columns are taken in tiles of up to four vectors, whose running values stay in registers. Every tile has its own part
-//! of the suffix buffer, row after row; so the last tile may overlap the one before.
+//! of the memory, row after row; so the last tile may overlap the one before. The suffix is made anew for every block.
 
 /// Makes `slide` (see [`super::Level::slide`]).
 macro_rules! slide {
@@ -18,65 +18,80 @@ macro_rules! slide {
     ) => {
         /// See [`super::Level::slide`]. Pictures narrower than a vector go to the level below.
         #[target_feature(enable = $feature)]
-        pub(super) fn slide(op: Extremum, job: Job, src: Rows, dst: RowsMut, suffix: RowsMut) {
+        pub(super) fn slide(op: Extremum, job: Job, src: Rows, dst: RowsMut, memory: RowsMut) {
             if job.width_px < $lane {
-                return $narrower(op, job, src, dst, suffix);
+                return $narrower(op, job, src, dst, memory);
             }
             match op {
-                Extremum::Least => slide_by::<false>(job, src, dst, suffix),
-                Extremum::Greatest => slide_by::<true>(job, src, dst, suffix),
+                Extremum::Least => slide_by::<false>(job, src, dst, memory),
+                Extremum::Greatest => slide_by::<true>(job, src, dst, memory),
             }
         }
 
         #[target_feature(enable = $feature)]
-        fn slide_by<const MAX: bool>(job: Job, src: Rows, mut dst: RowsMut, suffix: RowsMut) {
-            let size = job.span.size();
-            let mut rest = &mut *suffix.pixels;
+        fn slide_by<const MAX: bool>(job: Job, src: Rows, mut dst: RowsMut, memory: RowsMut) {
+            let Cut { length, .. } = job.cut;
+            let (suffix, mut rest) = memory.pixels.split_at_mut(length * memory.stride_px);
             let mut x = 0;
             while x < job.width_px {
-                let step = tile_width(size, job.width_px - x);
-                let own = rest.split_off_mut(..step * size);
-                let own = own.expect("the suffix has room for every tile");
+                let step = match (job.width_px - x) / $lane {
+                    4.. => 4 * $lane,
+                    2.. => 2 * $lane,
+                    _ => $lane,
+                };
+                let own = rest.split_off_mut(..step * 2 * job.cut.remembered());
+                let own = own.expect("the memory has room for every tile");
                 let column = x.min(job.width_px - step);
                 if step == 4 * $lane {
-                    column_of_tiles::<MAX, { 4 * $lane }>(job, column, src, &mut dst, own);
+                    tiles::<MAX, { 4 * $lane }>(job, column, src, &mut dst, suffix, own);
                 } else if step == 2 * $lane {
-                    column_of_tiles::<MAX, { 2 * $lane }>(job, column, src, &mut dst, own);
+                    tiles::<MAX, { 2 * $lane }>(job, column, src, &mut dst, suffix, own);
                 } else {
-                    column_of_tiles::<MAX, $lane>(job, column, src, &mut dst, own);
+                    tiles::<MAX, $lane>(job, column, src, &mut dst, suffix, own);
                 }
                 x += step;
             }
         }
 
-        /// As wide as the picture allows and as lets the source, the output and the suffix of a block stay in the nearest
-        /// cache.
-        fn tile_width(size: usize, left: usize) -> usize {
-            let fitting = (super::NEAREST_CACHE / (3 * size)).max(128);
-            match fitting.min(left) / $lane {
-                4.. => 4 * $lane,
-                2.. => 2 * $lane,
-                _ => $lane,
-            }
-        }
-
         /// All blocks of the job in `WIDTH` columns from `x` on.
         #[target_feature(enable = $feature)]
-        fn column_of_tiles<const MAX: bool, const WIDTH: usize>(
+        fn tiles<const MAX: bool, const WIDTH: usize>(
             job: Job,
             x: usize,
             src: Rows,
             dst: &mut RowsMut,
             suffix: &mut [u8],
+            memory: &mut [u8],
         ) {
+            let suffix = &mut suffix.as_chunks_mut::<WIDTH>().0[..job.cut.length];
+            let (blocks, tails) = memory
+                .as_chunks_mut::<WIDTH>()
+                .0
+                .split_at_mut(job.cut.remembered());
             for block in job.blocks() {
-                tile::<MAX, WIDTH>(
-                    &block,
-                    x,
-                    src.from(block.src),
-                    &mut dst.from(block.out),
-                    suffix,
+                if block.index == 0 {
+                    for row in blocks.iter_mut().chain(&mut *tails) {
+                        put(row, &neutral::<MAX>());
+                    }
+                }
+                let slot = block.index % blocks.len();
+                let mut common = join::<MAX, WIDTH>(&neutral::<MAX>(), &tails[slot]);
+                for i in 0..blocks.len() {
+                    if i != slot {
+                        common = join::<MAX, WIDTH>(&common, &blocks[i]);
+                    }
+                }
+                let (above, below) = block.back_rows;
+                let back = View::new(src.from(block.back), x, below - above);
+                make_suffix::<MAX, WIDTH>(&block, back, common, suffix);
+                let front = View::new(src.from(block.front), x, block.front_rows);
+                let (from, to) = block.yields;
+                let dst = ViewMut::new(dst.from(block.out), x, to - from);
+                put(
+                    &mut blocks[slot],
+                    &yield_rows::<MAX, WIDTH>(&block, front, dst, suffix),
                 );
+                put(&mut tails[slot], &tail_of::<MAX, WIDTH>(&block, front));
             }
         }
 
@@ -110,69 +125,65 @@ macro_rules! slide {
             }
         }
 
-        /// One block of `WIDTH` columns from `x` on.
+        /// Row `o` becomes the extremum of rows `o..` of those in which windows begin, and of the common rows.
         #[inline]
         #[target_feature(enable = $feature)]
-        fn tile<const MAX: bool, const WIDTH: usize>(
+        fn make_suffix<const MAX: bool, const WIDTH: usize>(
             block: &Block,
-            x: usize,
-            src: Rows,
-            dst: &mut RowsMut,
-            suffix: &mut [u8],
+            back: View<WIDTH>,
+            common: Values,
+            suffix: &mut [[u8; WIDTH]],
         ) {
-            let inside = block.rows_in;
-            let suffix = &mut suffix.as_chunks_mut().0[..block.size];
-            let src = View::new(src, x, inside);
-            let dst = ViewMut::new(dst.from(0), x, block.end - block.skip);
-            yield_rows::<MAX, WIDTH>(block, src, dst, suffix);
-            if block.is_last {
-                return;
+            let (above, below) = block.back_rows;
+            let mut values = common;
+            for row in &mut suffix[below..] {
+                put(row, &values);
             }
-            let mut backward = neutral::<MAX>();
-            for row in &mut suffix[inside..] {
-                put(row, &backward);
+            for o in (above..below).rev() {
+                values = join::<MAX, WIDTH>(&values, back.row(o - above));
+                put(&mut suffix[o], &values);
             }
-            for o in (0..inside).rev() {
-                backward = join::<MAX, WIDTH>(&backward, src.row(o));
-                put(&mut suffix[o], &backward);
+            for row in &mut suffix[..above] {
+                put(row, &values);
             }
         }
 
-        /// The forward half of [`tile`].
+        /// The running prefix of the block, joined with the suffix. Gives the extremum of the whole block.
         #[inline]
         #[target_feature(enable = $feature)]
         fn yield_rows<const MAX: bool, const WIDTH: usize>(
             block: &Block,
-            src: View<WIDTH>,
+            front: View<WIDTH>,
             mut dst: ViewMut<WIDTH>,
             suffix: &[[u8; WIDTH]],
-        ) {
-            let Block { skip, end, .. } = *block;
-            let inside = block.rows_in;
-            // The last row of a block ends a window that lies in this block alone, as do all in the first block.
-            let joined = match block.is_first {
-                true => skip,
-                false => end.min(block.size - 1),
-            };
+        ) -> Values {
+            let ((from, to), inside) = (block.yields, block.front_rows);
             let mut prefix = neutral::<MAX>();
-            for o in 0..skip.min(inside) {
-                prefix = join::<MAX, WIDTH>(&prefix, src.row(o));
+            for o in 0..from.min(inside) {
+                prefix = join::<MAX, WIDTH>(&prefix, front.row(o));
             }
-            for o in skip..joined.min(inside) {
-                prefix = join::<MAX, WIDTH>(&prefix, src.row(o));
-                let both = join::<MAX, WIDTH>(&prefix, &suffix[o + 1]);
-                put(dst.row(o - skip), &both);
+            for o in from..to.min(inside) {
+                prefix = join::<MAX, WIDTH>(&prefix, front.row(o));
+                put(dst.row(o - from), &join::<MAX, WIDTH>(&prefix, &suffix[o]));
             }
-            for o in skip.max(inside)..joined {
-                let both = join::<MAX, WIDTH>(&prefix, &suffix[o + 1]);
-                put(dst.row(o - skip), &both);
+            for o in from.max(inside)..to {
+                put(dst.row(o - from), &join::<MAX, WIDTH>(&prefix, &suffix[o]));
             }
-            for o in joined..end {
-                if o < inside {
-                    prefix = join::<MAX, WIDTH>(&prefix, src.row(o));
-                }
-                put(dst.row(o - skip), &prefix);
+            prefix
+        }
+
+        /// The extremum of the last rows of the block.
+        #[inline]
+        #[target_feature(enable = $feature)]
+        fn tail_of<const MAX: bool, const WIDTH: usize>(
+            block: &Block,
+            front: View<WIDTH>,
+        ) -> Values {
+            let mut tail = neutral::<MAX>();
+            for o in block.cut.length - block.cut.tail..block.front_rows {
+                tail = join::<MAX, WIDTH>(&tail, front.row(o));
             }
+            tail
         }
     };
 }

@@ -6,7 +6,7 @@ belt position and holds both against each other:
 * among parts more than 0.3 mm from a limit at most 1 wrong verdict in 1000, misses and false rejects counted apart;
 * `missing_mm` and `excess_mm` within 0.35 mm (1.4 px) of the truth for 99 % of the parts that were gauged.
 
-    check_accuracy.py [PARTS] [SEED ...]        defaults: 120 parts, seeds 901 and 902 for each scene
+    accuracy.py [PARTS] [SEED ...]        defaults: 120 parts, seeds 901 and 902 for each scene
 """
 
 import csv
