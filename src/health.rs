@@ -78,7 +78,11 @@ impl Durations {
             let eighths = ((1 << PER_OCTAVE_LOG2) + within as u128) << octave;
             Micros(i64::try_from(eighths >> PER_OCTAVE_LOG2).unwrap_or(i64::MAX))
         };
-        let filled = self.counts.iter().enumerate().filter(|(_, count)| **count > 0);
+        let filled = self
+            .counts
+            .iter()
+            .enumerate()
+            .filter(|(_, count)| **count > 0);
         filled.map(move |(k, &count)| Bucket {
             from: edge(k),
             to: edge(k + 1),

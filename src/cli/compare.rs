@@ -11,7 +11,7 @@ use super::sorting::{progress, sort};
 use super::station::{Station, frame_size};
 use crate::recording::Recording;
 use crate::replay::LABEL_GATE;
-use crate::replay::report::picture::Album;
+use crate::replay::report::album::Album;
 use crate::replay::report::words::mm;
 use crate::tuning::{Change, Comparison, Sides, changes_csv, compare, page_of_changes, said};
 
@@ -146,7 +146,7 @@ fn line(change: &Change) -> String {
     });
     let side = |seen: &Option<crate::tuning::Seen>| {
         let seen = seen.as_ref();
-        let figures = seen.and_then(|seen| Some((seen.missing_mm?, seen.excess_mm?)));
+        let figures = seen.and_then(|seen| Some((seen.missing_mm()?, seen.excess_mm()?)));
         let figures = figures.map_or_else(String::new, |(missing, excess)| {
             format!(", missing {} mm, excess {} mm", mm(missing), mm(excess))
         });

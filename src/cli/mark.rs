@@ -9,7 +9,7 @@ use super::sorting::{progress, sort};
 use super::station::Station;
 use crate::recording::{Label, labels_csv};
 use crate::replay::LABEL_GATE;
-use crate::replay::report::picture::Album;
+use crate::replay::report::album::Album;
 use crate::shape::Verdict;
 use crate::tuning::{propose, sheet};
 

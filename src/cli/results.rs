@@ -9,7 +9,7 @@ use serde_json::{Value, json};
 use super::files::write_whole;
 use super::station::Station;
 use super::timeline;
-use crate::belt::Part;
+use crate::belt::{Part, Stretch};
 use crate::frames::Frame;
 use crate::recording::{Label, Recording};
 use crate::reject::line::{LineCounts, LineFault, Signal, SignalWriter};
@@ -95,9 +95,15 @@ impl Results<'_> {
     pub(super) fn score(&self, labels: &[Label]) -> Score {
         let parts = self.outcome.parts.iter();
         let parts: Vec<Placed> = parts.map(|(part, _)| Placed::from(part)).collect();
+        let unseen = self.outcome.unseen.iter().map(|(stretch, _)| *stretch);
+        let rejected: Vec<Stretch> = match self.settings().belt.unseen {
+            Policy::Reject => unseen.collect(),
+            Policy::Keep | Policy::Stop => Vec::new(),
+        };
         score(
             labels,
             &parts,
+            &rejected,
             self.settings().belt.part_pitch_mm * LABEL_GATE,
         )
     }

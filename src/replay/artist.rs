@@ -1,14 +1,14 @@
 //! Finds a part again in the frame that speaks for it, and draws it with its marks and figures.
 
-use image::{GrayImage, Luma, RgbImage};
+use image::RgbImage;
 
 use super::pictures::{Marks, Sketch, draw_part};
 use crate::belt::{Part, View};
 use crate::frames::{Frame, Gray};
 use crate::inspect::judge;
 use crate::settings::{Geometry, Settings};
-use crate::shape::{Judge, Judged, Silhouette, Verdict};
-use crate::stage::{Level, Plan, Region, Stage};
+use crate::shape::{Drawing, Judge, Judged, Silhouette, Verdict};
+use crate::stage::{Level, Plan, Region, Stage, Steps};
 
 /// Stage and judge once more, for pictures.
 pub struct Artist<'a> {
@@ -48,7 +48,51 @@ impl<'a> Artist<'a> {
         self.draw(frame, (view.along_mm, view.across_mm), view.judged, title)
     }
 
+    /// Looks for a part in `frame`, the one that was captured at `part.spoken_us`.
+    pub fn find<'f>(&mut self, frame: &'f Frame, part: &Part) -> Sight<'f> {
+        self.find_at(frame, (part.along_mm, part.across_mm), part.judged)
+    }
+
+    /// What each step makes of `picture`, a region of interest.
+    pub fn steps(&mut self, picture: Gray<'_>) -> Steps {
+        self.stage.steps(picture)
+    }
+
     /// The region nearest to `at` (along and across the belt) with what was judged of it.
+    fn find_at<'f>(
+        &mut self,
+        frame: &'f Frame,
+        at: (f64, f64),
+        judged: Option<Judged>,
+    ) -> Sight<'f> {
+        let geometry = self.geometry;
+        let at_speed_mm = frame.captured_us.as_seconds() * self.settings.belt.speed_mm_s;
+        let belt_mm = frame.belt_mm.unwrap_or(at_speed_mm);
+        let picture = frame.gray().window(geometry.window);
+        let scene = self.stage.run(picture);
+        let apart = |region: &Region| {
+            let along_mm = belt_mm - geometry.behind_upstream_mm(region.centroid_x + 0.5);
+            let across_mm = geometry.below_top_mm(region.centroid_y + 0.5);
+            (along_mm - at.0).hypot(across_mm - at.1)
+        };
+        let nearest = scene
+            .regions
+            .iter()
+            .min_by(|a, b| apart(a).total_cmp(&apart(b)));
+        let drawing = nearest.zip(judged).map(|(region, judged)| {
+            let runs = &scene.runs[region.runs.clone()];
+            self.judge.drawing(region, runs, &judged)
+        });
+        let box_px = |region: &Region| {
+            [region.x_min, region.y_min, region.x_max, region.y_max].map(|px| px as usize)
+        };
+        Sight {
+            picture,
+            part_px: nearest.map(box_px),
+            drawing,
+        }
+    }
+
     fn draw(
         &mut self,
         frame: &Frame,
@@ -56,123 +100,32 @@ impl<'a> Artist<'a> {
         judged: Option<Judged>,
         title: String,
     ) -> RgbImage {
-        let picture = frame.gray().window(self.geometry.window);
-        let place = Place::new(at, frame, self.settings);
-        let scene = self.stage.run(picture);
-        let words = words(title, judged, self.settings);
-        let Some(region) = place.nearest(&scene.regions, &self.geometry) else {
-            return blank(picture, self.geometry, &words);
-        };
-        let runs = &scene.runs[region.runs.clone()];
-        let drawing = judged.map(|judged| self.judge.drawing(region, runs, &judged));
-        let marks = judged.zip(drawing.as_ref()).map(|(judged, drawing)| Marks {
-            drawing,
-            missing: judged.missing,
-            excess: judged.excess,
-        });
+        let sight = self.find_at(frame, at, judged);
+        let marks = judged.zip(sight.drawing.as_ref());
+        let all = [0, 0, sight.picture.width_px, sight.picture.height_px];
         draw_part(&Sketch {
-            picture,
-            part_px: box_px(region),
-            marks,
+            picture: sight.picture,
+            // Nothing is found any more: all of the picture, with the words.
+            part_px: sight.part_px.unwrap_or(all),
+            marks: marks.map(|(judged, drawing)| Marks {
+                drawing,
+                missing: judged.missing,
+                excess: judged.excess,
+            }),
             scale: self.geometry.scale,
-            words: &words,
-        })
-    }
-
-    /// What each step made of the part and half its size of belt around it; `frame` as for [`Artist::draw_part`]. Empty when
-    /// nothing is found any more.
-    pub fn steps(&mut self, frame: &Frame, part: &Part) -> Vec<(&'static str, GrayImage)> {
-        let picture = frame.gray().window(self.geometry.window);
-        let at = (part.along_mm, part.across_mm);
-        let place = Place::new(at, frame, self.settings);
-        let regions = &self.stage.run(picture).regions;
-        let Some(part_px) = place.nearest(regions, &self.geometry).map(box_px) else {
-            return Vec::new();
-        };
-        let shown = Crop::around(part_px, picture);
-        let steps = self.stage.steps(picture);
-        let step = |pixels| Gray {
-            pixels,
-            stride_px: picture.width_px,
-            ..picture
-        };
-        vec![
-            ("gray", shown.cut(picture)),
-            ("top-hat", shown.cut(step(&steps.top_hat))),
-            ("binary", shown.cut(step(&steps.binary))),
-            ("filled", shown.cut(step(&steps.filled))),
-        ]
-    }
-}
-
-fn box_px(region: &Region) -> [usize; 4] {
-    [region.x_min, region.y_min, region.x_max, region.y_max].map(|px| px as usize)
-}
-
-/// Where a part lies, and where the belt was when a frame showed it.
-struct Place {
-    at: (f64, f64),
-    belt_mm: f64,
-}
-
-impl Place {
-    fn new(at: (f64, f64), frame: &Frame, settings: &Settings) -> Self {
-        let at_speed = || frame.captured_us.as_seconds() * settings.belt.speed_mm_s;
-        Self {
-            at,
-            belt_mm: frame.belt_mm.unwrap_or_else(at_speed),
-        }
-    }
-
-    fn nearest<'r>(&self, regions: &'r [Region], geometry: &Geometry) -> Option<&'r Region> {
-        let apart = |region: &Region| {
-            let along_mm = self.belt_mm - geometry.behind_upstream_mm(region.centroid_x + 0.5);
-            let across_mm = geometry.below_top_mm(region.centroid_y + 0.5);
-            (along_mm - self.at.0).hypot(across_mm - self.at.1)
-        };
-        regions.iter().min_by(|a, b| apart(a).total_cmp(&apart(b)))
-    }
-}
-
-/// A piece of a picture.
-#[derive(Clone, Copy)]
-struct Crop {
-    left: usize,
-    top: usize,
-    width: usize,
-    height: usize,
-}
-
-impl Crop {
-    /// A part and half its size around it, as far as the picture goes.
-    fn around([left, top, right, bottom]: [usize; 4], picture: Gray<'_>) -> Self {
-        let around = (right - left).max(bottom - top) / 2;
-        let (left, top) = (left.saturating_sub(around), top.saturating_sub(around));
-        Self {
-            left,
-            top,
-            width: (right + around).min(picture.width_px) - left,
-            height: (bottom + around).min(picture.height_px) - top,
-        }
-    }
-
-    fn cut(self, picture: Gray<'_>) -> GrayImage {
-        GrayImage::from_fn(self.width as u32, self.height as u32, |x, y| {
-            Luma([picture.row(self.top + y as usize)[self.left + x as usize]])
+            words: &words(title, judged, self.settings),
         })
     }
 }
 
-/// A frame in which nothing is found any more: all of it, with the words.
-fn blank(picture: Gray<'_>, geometry: Geometry, words: &[String]) -> RgbImage {
-    let part_px = [0, 0, picture.width_px, picture.height_px];
-    draw_part(&Sketch {
-        picture,
-        part_px,
-        marks: None,
-        scale: geometry.scale,
-        words,
-    })
+/// A part found again.
+pub struct Sight<'f> {
+    /// The region of interest.
+    pub picture: Gray<'f>,
+    /// The part's box in it: left, top, right, bottom (the last two exclusive); `None` if nothing is found any more.
+    pub part_px: Option<[usize; 4]>,
+    /// Taught outline and flaws; `None` for a part that was never seen whole.
+    pub drawing: Option<Drawing>,
 }
 
 fn words(title: String, judged: Option<Judged>, settings: &Settings) -> Vec<String> {

@@ -10,7 +10,7 @@ mod score;
 mod summary;
 
 pub use ahead::Ahead;
-pub use artist::Artist;
+pub use artist::{Artist, Sight};
 pub use drive::{Looks, Pace, drive};
 pub use outcome::{Outcome, Row, parts_csv, rows};
 

@@ -1,6 +1,6 @@
 //! Verdicts against labels, matched by belt position.
 
-use crate::belt::{Extent, Part};
+use crate::belt::{Extent, Part, Stretch};
 use crate::recording::Label;
 use crate::shape::Verdict;
 
@@ -45,7 +45,7 @@ pub struct Match {
 pub struct Score {
     /// Every label and every part exactly once, in the order of the belt. Two labels may share a part that touches.
     pub matches: Vec<Match>,
-    /// Labelled `reject`, kept (or not seen at all).
+    /// Labelled `reject`, kept, or not seen at all and not on belt that was rejected for that.
     pub misses: Vec<Match>,
     /// Labelled `keep`, rejected.
     pub false_rejects: Vec<Match>,
@@ -71,8 +71,13 @@ impl Score {
 /// Matches labels and parts, nearest first, and compares their verdicts.
 ///
 /// A label belongs to the part nearest to it, at most `gate_mm` outside its box; each part takes one label so, and what
-/// is left over goes to parts that already have one (a pair that has grown together carries two labels).
-pub fn score(labels: &[Label], parts: &[Placed], gate_mm: f64) -> Score {
+/// is left over goes to parts that already have one (a pair that has grown together carries two labels). What lay on
+/// `rejected` belt was thrown away with it, seen or not.
+pub fn score(labels: &[Label], parts: &[Placed], rejected: &[Stretch], gate_mm: f64) -> Score {
+    let gone = |label: &Label| {
+        let holds = |belt: &Stretch| (belt.from_mm..=belt.to_mm).contains(&label.along_mm);
+        rejected.iter().any(holds)
+    };
     let (of_label, labelled) = pair_up(labels, parts, gate_mm);
     let mut score = Score::default();
     for (l, label) in labels.iter().enumerate() {
@@ -82,6 +87,7 @@ pub fn score(labels: &[Label], parts: &[Placed], gate_mm: f64) -> Score {
         };
         score.matches.push(found);
         match (label.verdict, of_label[l].map(|p| parts[p].verdict)) {
+            (Verdict::Reject, None) if gone(label) => {}
             (Verdict::Reject, Some(Verdict::Keep) | None) => score.misses.push(found),
             (Verdict::Keep, Some(Verdict::Reject)) => score.false_rejects.push(found),
             (Verdict::Keep, None) => score.not_found.push(found),
@@ -153,4 +159,35 @@ fn candidates(labels: &[Label], parts: &[Placed], gate_mm: f64) -> Vec<(f64, usi
         }
     }
     pairs
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn label(along_mm: f64, verdict: Verdict) -> Label {
+        Label {
+            along_mm,
+            across_mm: 30.0,
+            verdict,
+            note: String::new(),
+        }
+    }
+
+    #[test]
+    fn a_bad_part_that_nobody_saw_passes_unless_its_belt_was_rejected() {
+        let labels = [
+            label(100.0, Verdict::Reject),
+            label(200.0, Verdict::Reject),
+            label(210.0, Verdict::Keep),
+        ];
+        let gone = Stretch {
+            from_mm: 180.0,
+            to_mm: 230.0,
+        };
+        let score = score(&labels, &[], &[gone], 10.0);
+        let labels = |list: &[Match]| list.iter().map(|found| found.label).collect::<Vec<_>>();
+        assert_eq!(labels(&score.misses), [Some(0)]);
+        assert_eq!(labels(&score.not_found), [Some(2)]);
+    }
 }

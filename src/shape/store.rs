@@ -91,9 +91,7 @@ impl Taught {
             path: file.to_owned(),
             problem,
         };
-        let text = read_text(file)?;
-        let note: Note = toml::from_str(&text)
-            .map_err(|error| wrong(error.to_string().trim_end().to_owned()))?;
+        let (note, picture) = read_note(file)?;
         check_name(&note.name).map_err(wrong)?;
         if !(0.001..=10.0).contains(&note.mm_per_px) {
             return Err(wrong(format!(
@@ -101,12 +99,6 @@ impl Taught {
                 note.mm_per_px
             )));
         }
-        let picture = beside(file, &note.picture).ok_or_else(|| {
-            wrong(format!(
-                "picture is {:?}; expected the plain name of a PNG file in the same folder",
-                note.picture
-            ))
-        })?;
         let gray = read_gray(&picture, MAX_SIDE_PX as u32)?;
         let silhouette = Silhouette {
             width_px: gray.width_px,
@@ -124,6 +116,12 @@ impl Taught {
             parts: note.parts,
             notes: note.notes,
         })
+    }
+
+    /// What a stored shape consists of: `file`, and the picture that it names.
+    pub fn files(file: &Path) -> Result<[PathBuf; 2], ShapeError> {
+        let (_, picture) = read_note(file)?;
+        Ok([file.to_owned(), picture])
     }
 
     /// Writes `file`, the TOML file, and a PNG of the same name beside it. Both are written under other names first and
@@ -159,6 +157,24 @@ impl Taught {
         fs::rename(&new_picture, &picture).map_err(ShapeError::file(&picture))?;
         fs::rename(&new_note, file).map_err(ShapeError::file(file))
     }
+}
+
+/// The TOML file and where its picture lies.
+fn read_note(file: &Path) -> Result<(Note, PathBuf), ShapeError> {
+    let wrong = |problem: String| ShapeError::Note {
+        path: file.to_owned(),
+        problem,
+    };
+    let text = read_text(file)?;
+    let note: Note =
+        toml::from_str(&text).map_err(|error| wrong(error.to_string().trim_end().to_owned()))?;
+    let picture = beside(file, &note.picture).ok_or_else(|| {
+        wrong(format!(
+            "picture is {:?}; expected the plain name of a PNG file in the same folder",
+            note.picture
+        ))
+    })?;
+    Ok((note, picture))
 }
 
 fn check_name(name: &str) -> Result<(), String> {

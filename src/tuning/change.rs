@@ -5,6 +5,7 @@ use serde::Serialize;
 use super::pairs::pair_parts;
 use crate::belt::Part;
 use crate::replay::Outcome;
+use crate::replay::report::facts::{Case, Figures};
 use crate::replay::report::words::mm;
 use crate::settings::Settings;
 use crate::shape::{Reason, Reasons, Verdict};
@@ -18,10 +19,8 @@ pub struct Seen {
     pub outlet: Option<String>,
     /// Its shape.
     pub shape: Option<String>,
-    /// Deepest bite.
-    pub missing_mm: Option<f64>,
-    /// Farthest burr.
-    pub excess_mm: Option<f64>,
+    /// Its figures with their limits.
+    pub figures: Option<Figures>,
     /// How far the figures are from the place where the verdict would flip; `None` where no figure in mm could flip it.
     pub flips_after_mm: Option<f64>,
 }
@@ -29,14 +28,31 @@ pub struct Seen {
 impl Seen {
     pub(super) fn new(part: &Part, outlet: Option<usize>, settings: &Settings) -> Self {
         let shape = part.judged.map(|judged| &settings.shapes[judged.shape]);
-        let mm = |px: f64| settings.scale().mm(px);
         Self {
             part: *part,
             outlet: outlet.map(|outlet| settings.outlets[outlet].name.clone()),
             shape: shape.map(|shape| shape.name.clone()),
-            missing_mm: part.judged.map(|judged| mm(judged.missing.px)),
-            excess_mm: part.judged.map(|judged| mm(judged.excess.px)),
+            figures: Figures::of(part, settings),
             flips_after_mm: flips_after_mm(part, settings),
+        }
+    }
+
+    /// Deepest bite.
+    pub fn missing_mm(&self) -> Option<f64> {
+        self.figures.map(|figures| figures.missing_mm)
+    }
+
+    /// Farthest burr.
+    pub fn excess_mm(&self) -> Option<f64> {
+        self.figures.map(|figures| figures.excess_mm)
+    }
+
+    /// The part as a report pictures it.
+    pub fn case(&self) -> Case<'_> {
+        Case {
+            part: &self.part,
+            label: None,
+            figures: self.figures,
         }
     }
 }
@@ -195,8 +211,8 @@ impl Line {
         let verdict = |seen: Option<&Seen>| seen.map(|seen| seen.part.verdict);
         let reasons = |seen: Option<&Seen>| seen.map(|seen| seen.part.reasons.to_string());
         let outlet = |seen: Option<&Seen>| seen.and_then(|seen| seen.outlet.clone());
-        let missing = |seen: Option<&Seen>| seen.and_then(|seen| seen.missing_mm).map(mm);
-        let excess = |seen: Option<&Seen>| seen.and_then(|seen| seen.excess_mm).map(mm);
+        let missing = |seen: Option<&Seen>| seen.and_then(Seen::missing_mm).map(mm);
+        let excess = |seen: Option<&Seen>| seen.and_then(Seen::excess_mm).map(mm);
         Some(Self {
             along_mm: mm(place.part.along_mm),
             across_mm: mm(place.part.across_mm),

@@ -5,7 +5,7 @@ use maud::{Markup, html};
 use super::change::{Change, Comparison, Seen};
 use crate::recording::RecordingError;
 use crate::replay::report::page::{Section, page, table};
-use crate::replay::report::picture::{Album, Picture};
+use crate::replay::report::album::Album;
 use crate::replay::report::words::{counted, mm};
 
 /// Pictures of parts that differ, and of parts near a flip; more would make the file too large to open.
@@ -101,10 +101,10 @@ fn row(change: &Change) -> Option<Vec<String>> {
         format!("{:.1}", place.part.across_mm),
         said(change.a.as_ref()),
         said(change.b.as_ref()),
-        figure(&change.a, |seen| seen.missing_mm),
-        figure(&change.b, |seen| seen.missing_mm),
-        figure(&change.a, |seen| seen.excess_mm),
-        figure(&change.b, |seen| seen.excess_mm),
+        figure(&change.a, Seen::missing_mm),
+        figure(&change.b, Seen::missing_mm),
+        figure(&change.a, Seen::excess_mm),
+        figure(&change.b, Seen::excess_mm),
         change.flips_after_mm().map_or_else(|| "-".to_owned(), mm),
     ])
 }
@@ -129,7 +129,7 @@ fn gallery(changes: &[Change], sides: &mut Sides<'_>) -> Result<Markup, Recordin
     for change in changes.iter().take(SHOWN) {
         for (k, seen) in [&change.a, &change.b].into_iter().enumerate() {
             let Some(seen) = seen else { continue };
-            if let Some(picture) = sides.albums[k].part(&seen.part)? {
+            if let Some(picture) = sides.albums[k].part(&seen.case())? {
                 cards.push(card(["A", "B"][k], seen, &picture));
             }
         }
@@ -142,13 +142,12 @@ fn gallery(changes: &[Change], sides: &mut Sides<'_>) -> Result<Markup, Recordin
     })
 }
 
-fn card(side: &str, seen: &Seen, picture: &Picture) -> Markup {
+fn card(side: &str, seen: &Seen, picture: &Markup) -> Markup {
     let part = &seen.part;
     let what = said(Some(seen));
-    let alt = format!("Part {} with settings {side}: {what}", part.number);
     html! {
         figure {
-            img src=(picture.uri) width=(picture.width_px) height=(picture.height_px) alt=(alt);
+            (picture)
             figcaption {
                 span.tag { (side) } b { "part " (part.number) } ", " (what) br;
                 (format!("{:.1} mm along, {:.1} mm across", part.along_mm, part.across_mm))

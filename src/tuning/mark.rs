@@ -48,7 +48,7 @@ pub fn propose(
         .iter()
         .map(|(part, _)| Placed::from(part))
         .collect();
-    let score = score(&persons, &placed, gate_mm);
+    let score = score(&persons, &placed, &[], gate_mm);
     let seen = |k: usize| {
         let (part, outlet) = &outcome.parts[k];
         Seen::new(part, *outlet, settings)

@@ -6,7 +6,7 @@ use super::change_page::said;
 use super::mark::Proposal;
 use crate::recording::RecordingError;
 use crate::replay::report::page::{Section, page};
-use crate::replay::report::picture::Album;
+use crate::replay::report::album::Album;
 use crate::replay::report::words::{counted, mm};
 
 /// A sheet of pictures in the order of the rows, each with its line in `labels.csv`; proposals only, at most `most`.
@@ -52,13 +52,11 @@ pub fn sheet(
 
 fn card(line: usize, row: &Proposal, album: &mut Album<'_>) -> Result<Markup, RecordingError> {
     let seen = row.seen.as_ref();
-    let picture = seen.map_or(Ok(None), |seen| album.part(&seen.part))?;
+    let picture = seen.map_or(Ok(None), |seen| album.part(&seen.case()))?;
     let what = said(seen);
     Ok(html! {
         figure {
-            @if let Some(picture) = picture {
-                img src=(picture.uri) width=(picture.width_px) height=(picture.height_px) alt={ "Line " (line) ": " (what) };
-            }
+            @if let Some(picture) = &picture { (picture) }
             figcaption {
                 span.tag { "line " (line) } b { (row.label.verdict) } br;
                 (what) br;

@@ -9,11 +9,13 @@ use serde::{Deserialize, Serialize};
 
 use super::layers::{Recipe, Stand, Surveyed, Surveyor};
 use super::shift::Shift;
+use crate::belt::Stretch;
 use crate::frames::Frame;
 use crate::inspect::{Look, Rules};
 use crate::recording::{Label, Recording, RecordingError};
 use crate::reject::PlanError;
 use crate::replay::{LABEL_GATE, Placed, score};
+use crate::settings::Policy;
 use crate::shape::{Reason, Verdict};
 use crate::sorter::{Event, Sorter};
 use crate::stage::Level;
@@ -88,6 +90,8 @@ struct Trial {
     look: Look,
     parts: Vec<Placed>,
     severity: Vec<f64>,
+    unseen: Policy,
+    rejected: Vec<Stretch>,
     given_up: Option<Tried>,
 }
 
@@ -104,6 +108,8 @@ impl Trial {
             look: Look::default(),
             parts: Vec::new(),
             severity: Vec::new(),
+            unseen: settings.belt.unseen,
+            rejected: Vec::new(),
             given_up: None,
         })
     }
@@ -124,8 +130,13 @@ impl Trial {
 
     fn happen(&mut self, until: Micros) {
         while let Some(event) = self.sorter.poll(until) {
-            let Event::Part(part, _) = event else {
-                continue;
+            let part = match event {
+                Event::Part(part, _) => part,
+                Event::Unseen(piece, _) => {
+                    self.throw_away(piece);
+                    continue;
+                }
+                _ => continue,
             };
             let hopeless = part.reasons.has(Reason::Touching) || part.reasons.has(Reason::Partial);
             let severity = part
@@ -134,6 +145,15 @@ impl Trial {
                 .map(|judged| judged.severity);
             self.parts.push(Placed::from(&part));
             self.severity.push(severity.unwrap_or(f64::INFINITY));
+        }
+    }
+
+    /// Belt that nobody saw, where the settings reject it. Pieces that follow each other are one stretch.
+    fn throw_away(&mut self, piece: Stretch) {
+        match self.rejected.last_mut() {
+            _ if self.unseen != Policy::Reject => {}
+            Some(last) if last.to_mm == piece.from_mm => last.to_mm = piece.to_mm,
+            _ => self.rejected.push(piece),
         }
     }
 
@@ -164,7 +184,7 @@ impl Trial {
     }
 
     fn tally(&self, labels: &[Label]) -> Tried {
-        let score = score(labels, &self.parts, self.gate_mm);
+        let score = score(labels, &self.parts, &self.rejected, self.gate_mm);
         let bad = labels
             .iter()
             .filter(|label| label.verdict == Verdict::Reject)

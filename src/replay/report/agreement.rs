@@ -26,7 +26,10 @@ pub struct Tally {
 impl Tally {
     /// Counts every label once.
     pub fn of(labels: &[Label], score: &Score) -> Self {
-        let bad = labels.iter().filter(|label| label.verdict == Verdict::Reject).count();
+        let bad = labels
+            .iter()
+            .filter(|label| label.verdict == Verdict::Reject)
+            .count();
         let count = |hits: usize, of: usize| Count::new(hits as u64, of as u64);
         Self {
             misses: count(score.misses.len(), bad),
@@ -49,8 +52,7 @@ pub fn agreement(facts: &Facts<'_>) -> Markup {
         (list("Labelled good, not seen", &score.not_found, labels, facts))
         @if !score.unlabelled.is_empty() {
             p {
-                (counted(score.unlabelled.len(), "part has", "parts have"))
-                " no label and count for nothing here."
+                "Without a label, and left out here: " (counted(score.unlabelled.len(), "part", "parts")) "."
             }
         }
         (curve(facts))
@@ -78,7 +80,9 @@ fn bounds(tally: &Tally) -> Markup {
             name.to_owned(),
             count.hits().to_string(),
             format!("{} {among}", count.of()),
-            count.ratio().map_or_else(none, |ratio| percent(ratio, Rounding::Nearest)),
+            count
+                .ratio()
+                .map_or_else(none, |ratio| percent(ratio, Rounding::Nearest)),
             percent(interval.low, Rounding::Down),
             percent(interval.high, Rounding::Up),
         ]
@@ -104,7 +108,7 @@ fn sentences(tally: &Tally) -> Markup {
         @for (nouns, count) in each {
             p {
                 span.verdict { (nouns.sentence(count, Share::P95)) "." }
-                @if let Some(rule) = nouns.in_the_head(count) { br; span.soft { (rule) "." } }
+                @if let Some(rule) = nouns.in_the_head(count) { " " (rule) }
             }
         }
         @if let Some(needed) = one_in_a_hundred {
@@ -120,7 +124,16 @@ fn list(title: &str, found: &[Match], labels: &[Label], facts: &Facts<'_>) -> Ma
     if found.is_empty() {
         return html! {};
     }
-    let head = ["part", "along mm", "across mm", "label", "note", "verdict", "missing mm", "excess mm"];
+    let head = [
+        "part",
+        "along mm",
+        "across mm",
+        "label",
+        "note",
+        "verdict",
+        "missing mm",
+        "excess mm",
+    ];
     let rows: Vec<_> = found
         .iter()
         .take(LISTED)
@@ -153,25 +166,20 @@ fn row(found: &Match, labels: &[Label], facts: &Facts<'_>) -> Vec<String> {
         format!("{across_mm:.1}"),
         label.map_or_else(String::new, |label| label.verdict.to_string()),
         label.map_or_else(String::new, |label| label.note.clone()),
-        case.map_or_else(|| "not seen".to_owned(), verdict),
+        case.map_or_else(|| "not seen".to_owned(), Case::verdict),
         figure(|figures| (figures.missing_mm, figures.missing_limit_mm)),
         figure(|figures| (figures.excess_mm, figures.excess_limit_mm)),
     ]
 }
 
-/// `reject: missing+excess`.
-pub fn verdict(case: &Case<'_>) -> String {
-    let (verdict, reasons) = (case.part.verdict, case.part.reasons);
-    if reasons.is_empty() {
-        verdict.to_string()
-    } else {
-        format!("{verdict}: {reasons}")
-    }
-}
-
 /// Misses against false rejects when all limits are multiplied by the same factor.
 fn curve(facts: &Facts<'_>) -> Markup {
-    let severities = |good| facts.side(good).filter_map(Case::severity).collect::<Vec<_>>();
+    let severities = |good| {
+        facts
+            .side(good)
+            .filter_map(Case::severity)
+            .collect::<Vec<_>>()
+    };
     let (good, bad) = (severities(true), severities(false));
     let curve = Tradeoff::of(&good, &bad);
     let Some(area) = curve.area() else {
@@ -184,10 +192,14 @@ fn curve(facts: &Facts<'_>) -> Markup {
 }
 
 fn caption(curve: &Tradeoff, area: f64) -> String {
-    let scaled = "All limits multiplied by one factor, from strict (left) to lax (right); the circle is where they stand.";
+    let scaled = "All limits multiplied by one factor, lax on the left, strict on the right; the circle is where they stand now. Parts \
+                  that were not seen are left out.";
     // Shown to one part in ten thousand, and 1 only when it is 1.
     let area = (area * 1e4).floor() / 1e4;
-    format!("{scaled} Area under the curve of caught bad parts over false rejects: {area:.4} (1 is a clean separation, 0.5 a coin). {}", clean(curve))
+    format!(
+        "{scaled} Area under the curve of caught bad parts over false rejects: {area:.4} (1 is a clean separation, 0.5 a coin). {}",
+        clean(curve)
+    )
 }
 
 /// The factors at which nothing goes wrong.
@@ -208,7 +220,10 @@ fn clean(curve: &Tradeoff) -> String {
 fn draw_curve(curve: &Tradeoff) -> Markup {
     let most = |of: fn(&crate::stats::Point) -> usize| {
         // The ends, where everything or nothing is rejected, would squeeze the part that matters.
-        let near = curve.points.iter().filter(|point| (0.5..=2.0).contains(&point.limit));
+        let near = curve
+            .points
+            .iter()
+            .filter(|point| (0.8..=1.25).contains(&point.limit));
         near.map(of).max().unwrap_or(0).max(1) as f64
     };
     let shares = |count: f64, of: usize| count / of as f64 * 100.0;
@@ -227,7 +242,12 @@ fn draw_curve(curve: &Tradeoff) -> Markup {
     let mut path = String::new();
     for (k, point) in shown.enumerate() {
         let (x, y) = place(point);
-        path.push_str(&format!("{}{} {}", if k == 0 { "M" } else { "L" }, n(x), n(y)));
+        path.push_str(&format!(
+            "{}{} {}",
+            if k == 0 { "M" } else { "L" },
+            n(x),
+            n(y)
+        ));
     }
     let now = curve.points.iter().rev().find(|point| point.limit <= 1.0);
     let marks = html! {
@@ -235,10 +255,15 @@ fn draw_curve(curve: &Tradeoff) -> Markup {
         @if let Some(now) = now {
             @let (x, y) = place(now);
             circle.here cx=(n(x)) cy=(n(y)) r="6" {}
-            text.note x=(n(x + 10.0)) y=(n(y - 8.0)) {
+            @let right = x > plot.width / 2.0;
+            text class=(if right { "note end" } else { "note" }) x=(n(if right { x - 10.0 } else { x + 10.0 })) y=(n(y - 9.0)) {
                 "now: " (counted(now.misses, "miss", "misses")) ", " (counted(now.false_rejects, "false reject", "false rejects"))
             }
         }
     };
-    plot.draw("Misses against false rejects", ("false rejects, % of good parts", "misses, % of bad parts"), &marks)
+    plot.draw(
+        "Misses against false rejects",
+        ("false rejects, % of good parts", "misses, % of bad parts"),
+        &marks,
+    )
 }

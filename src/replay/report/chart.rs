@@ -54,7 +54,9 @@ impl Axis {
 /// 1, 2 or 5 times a power of ten, not below `step`.
 pub fn round_step(step: f64) -> f64 {
     let power = 10f64.powf(step.log10().floor());
-    let round = [1.0, 2.0, 5.0].into_iter().find(|m| m * power >= step * (1.0 - 1e-9));
+    let round = [1.0, 2.0, 5.0]
+        .into_iter()
+        .find(|m| m * power >= step * (1.0 - 1e-9));
     round.unwrap_or(10.0) * power
 }
 
@@ -75,7 +77,13 @@ impl Plot {
     /// A drawing of this size whose axes run over `x` and `y` (first value, last value).
     pub fn new(width: f64, height: f64, x: (f64, f64), y: (f64, f64)) -> Self {
         // A single value has a neighbourhood too.
-        let spread = |(from, to): (f64, f64)| if to > from { (from, to) } else { (from, from + 1.0) };
+        let spread = |(from, to): (f64, f64)| {
+            if to > from {
+                (from, to)
+            } else {
+                (from, from + 1.0)
+            }
+        };
         let axis = |(from, to), start, end| Axis {
             from,
             to,
@@ -130,7 +138,11 @@ impl Plot {
     pub fn mark_x(&self, x: f64, text: &str) -> Markup {
         let at = self.x.at(x);
         let near_the_end = at > (self.x.start + self.x.end) / 2.0;
-        let (class, shift) = if near_the_end { ("note end", -5.0) } else { ("note", 5.0) };
+        let (class, shift) = if near_the_end {
+            ("note end", -5.0)
+        } else {
+            ("note", 5.0)
+        };
         html! {
             path.limit d={ "M" (n(at)) " " (n(self.y.end - 6.0)) "V" (n(self.y.start)) } {}
             text class=(class) x=(n(at + shift)) y=(n(self.y.end + 2.0)) { (text) }
@@ -173,17 +185,27 @@ mod tests {
     #[test]
     fn ticks_are_round_and_inside() {
         let texts = |from, to| -> Vec<String> {
-            axis(from, to).ticks(5).into_iter().map(|(_, text)| text).collect()
+            axis(from, to)
+                .ticks(5)
+                .into_iter()
+                .map(|(_, text)| text)
+                .collect()
         };
         assert_eq!(texts(0.0, 1.0), ["0.0", "0.2", "0.4", "0.6", "0.8", "1.0"]);
         assert_eq!(texts(-3.0, 11.0), ["0", "5", "10"]);
-        assert_eq!(texts(1000.0, 5000.0), ["1000", "2000", "3000", "4000", "5000"]);
+        assert_eq!(
+            texts(1000.0, 5000.0),
+            ["1000", "2000", "3000", "4000", "5000"]
+        );
     }
 
     #[test]
     fn values_outside_stay_in_the_drawing() {
         let axis = axis(0.0, 10.0);
-        assert_eq!((axis.at(5.0), axis.at(-1.0), axis.at(99.0)), (50.0, 0.0, 100.0));
+        assert_eq!(
+            (axis.at(5.0), axis.at(-1.0), axis.at(99.0)),
+            (50.0, 0.0, 100.0)
+        );
     }
 
     #[test]

@@ -17,7 +17,10 @@ pub fn counts(report: &Report<'_>) -> Markup {
         ("kept", kept(&summary)),
         ("rejected", summary.rejected.to_string()),
         ("frames", summary.frames.to_string()),
-        ("recorded time", format!("{:.1} s", (last_us - first_us).as_seconds())),
+        (
+            "recorded time",
+            format!("{:.1} s", (last_us - first_us).as_seconds()),
+        ),
         ("unseen belt", unseen(&summary, report)),
         ("overdue frames", summary.overdue_frames.to_string()),
         ("crumbs left out", summary.specks.to_string()),
@@ -27,13 +30,19 @@ pub fn counts(report: &Report<'_>) -> Markup {
     }
     if let Some((cause, at)) = report.outcome.stopped {
         let at = at.as_seconds();
-        rows.push(("stopped", format!("{cause} (at {at:.3} s); every outlet is off")));
+        rows.push((
+            "stopped",
+            format!("{cause} (at {at:.3} s); every outlet is off"),
+        ));
     }
     pairs(&rows)
 }
 
 fn kept(summary: &Summary) -> String {
-    let to = summary.sorted.iter().map(|(name, count)| format!("{count} to {name}"));
+    let to = summary
+        .sorted
+        .iter()
+        .map(|(name, count)| format!("{count} to {name}"));
     let to: Vec<_> = to.collect();
     if to.is_empty() {
         summary.kept.to_string()
@@ -60,7 +69,13 @@ pub fn reasons(report: &Report<'_>) -> Markup {
     if summary.rejected == 0 {
         return html! { p { "No part was rejected." } };
     }
-    let most = summary.reasons.iter().map(|(_, count)| *count).max().unwrap_or(1).max(1);
+    let most = summary
+        .reasons
+        .iter()
+        .map(|(_, count)| *count)
+        .max()
+        .unwrap_or(1)
+        .max(1);
     let height = ROW * summary.reasons.len() as f64;
     html! {
         p { (summary.rejected) " of " (counted(summary.parts, "part was", "parts were")) " rejected. A part may have several reasons." }

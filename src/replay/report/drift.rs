@@ -30,9 +30,18 @@ pub fn drift(facts: &Facts<'_>) -> Markup {
         return html! { p { "No part was seen whole." } };
     }
     let [good, bad] = facts.side_names();
+    let marks = if dots.len() <= SINGLE_PARTS {
+        format!(
+            "Discs are {good} parts, crosses {bad} ones; what lies outside is drawn at the edge."
+        )
+    } else {
+        format!(
+            "Each bar spans the {good} parts of its moment, each cross is the {bad} part that came nearest to passing."
+        )
+    };
     let caption = format!(
-        "Margin is the distance to the nearer limit; below 0 a part is beyond it. Discs are {good} parts, crosses {bad} ones; \
-         what lies outside is drawn at the edge. The line is the median of {good} parts. {}",
+        "Margin is the distance to the nearer limit; below 0 a part is beyond it. {marks} The line is the median of {good} \
+         parts. {}",
         trend(&dots, good)
     );
     figure(&draw(&dots), &caption, true)
@@ -64,18 +73,30 @@ fn medians(dots: &[Dot]) -> Vec<(f64, f64)> {
         margins[((dot.seconds / piece) as usize).min(PIECES - 1)].push(dot.margin_mm);
     }
     let middle = |k: usize| (k as f64 + 0.5) * piece;
-    let enough = margins.iter_mut().enumerate().filter(|(_, margins)| margins.len() >= LEAST);
-    enough.filter_map(|(k, margins)| Some((middle(k), median(margins)?))).collect()
+    let enough = margins
+        .iter_mut()
+        .enumerate()
+        .filter(|(_, margins)| margins.len() >= LEAST);
+    enough
+        .filter_map(|(k, margins)| Some((middle(k), median(margins)?)))
+        .collect()
 }
 
 fn trend(dots: &[Dot], good: &str) -> String {
-    let mut margins: Vec<f64> = dots.iter().filter(|dot| dot.good).map(|dot| dot.margin_mm).collect();
+    let mut margins: Vec<f64> = dots
+        .iter()
+        .filter(|dot| dot.good)
+        .map(|dot| dot.margin_mm)
+        .collect();
     let fifth = margins.len() / 5;
     if fifth < LEAST {
         return format!("Too few {good} parts to tell a trend.");
     }
     let last = margins.len() - fifth;
-    let (first, last) = (median(&mut margins[..fifth].to_vec()), median(&mut margins[last..]));
+    let (first, last) = (
+        median(&mut margins[..fifth].to_vec()),
+        median(&mut margins[last..]),
+    );
     let (first, last) = (first.unwrap_or_default(), last.unwrap_or_default());
     format!(
         "Median margin of {good} parts: {} mm in the first fifth, {} mm in the last.",
@@ -89,7 +110,12 @@ fn draw(dots: &[Dot]) -> Markup {
     let most = dots.iter().map(|dot| dot.margin_mm).fold(0.0, f64::max);
     let least = dots.iter().map(|dot| dot.margin_mm).fold(0.0, f64::min);
     // Broken parts are far beyond: they must not squeeze the good ones.
-    let plot = Plot::new(900.0, 300.0, (0.0, end), (least.max(-1.5 * most.max(0.1)), most.max(0.1) * 1.05));
+    let plot = Plot::new(
+        900.0,
+        300.0,
+        (0.0, end),
+        (least.max(-1.5 * most.max(0.1)), most.max(0.1) * 1.05),
+    );
     let line: Vec<_> = medians(dots)
         .iter()
         .map(|(seconds, margin)| format!("{} {}", n(plot.x.at(*seconds)), n(plot.y.at(*margin))))
@@ -103,7 +129,11 @@ fn draw(dots: &[Dot]) -> Markup {
         (plot.mark_y(0.0, "limit"))
         @if line.len() > 1 { path.median d={ "M" (line.join("L")) } {} }
     };
-    plot.draw("Margin over time", ("seconds since the first part", "margin in mm"), &marks)
+    plot.draw(
+        "Margin over time",
+        ("seconds since the first part", "margin in mm"),
+        &marks,
+    )
 }
 
 fn mark(plot: &Plot, dot: &Dot) -> Markup {
@@ -111,7 +141,8 @@ fn mark(plot: &Plot, dot: &Dot) -> Markup {
     if dot.good { disc(x, y) } else { cross(x, y) }
 }
 
-/// For each column of the chart a bar from the smallest to the largest margin of good parts, and the worst of the bad.
+/// For each column of the chart a bar from the smallest to the largest margin of good parts, and a cross for the
+/// bad part that came nearest to passing.
 fn columns(plot: &Plot, dots: &[Dot]) -> Markup {
     let mut ends = vec![[None::<(f64, f64)>; 2]; COLUMNS];
     for dot in dots {
@@ -120,13 +151,14 @@ fn columns(plot: &Plot, dots: &[Dot]) -> Markup {
         let (low, high) = end.unwrap_or((dot.margin_mm, dot.margin_mm));
         *end = Some((low.min(dot.margin_mm), high.max(dot.margin_mm)));
     }
-    let x = |k: usize| plot.x.start + (k as f64 + 0.5) / COLUMNS as f64 * (plot.x.end - plot.x.start);
+    let x =
+        |k: usize| plot.x.start + (k as f64 + 0.5) / COLUMNS as f64 * (plot.x.end - plot.x.start);
     html! {
         @for (k, [good, bad]) in ends.iter().enumerate() {
             @if let Some((low, high)) = good {
                 path.good.stroke d={ "M" (n(x(k))) " " (n(plot.y.at(*low) + 1.0)) "V" (n(plot.y.at(*high) - 1.0)) } {}
             }
-            @if let Some((low, _)) = bad { (cross(x(k), plot.y.at(*low))) }
+            @if let Some((_, high)) = bad { (cross(x(k), plot.y.at(*high))) }
         }
     }
 }
@@ -147,7 +179,10 @@ mod tests {
     #[test]
     fn a_margin_that_shrinks_is_told() {
         let text = trend(&dots(100, |k| 2.0 - k as f64 / 100.0), "good");
-        assert!(text.contains("1.90 mm in the first fifth, 1.10 mm in the last"), "{text}");
+        assert!(
+            text.contains("1.91 mm in the first fifth, 1.11 mm in the last"),
+            "{text}"
+        );
         assert!(trend(&dots(10, |_| 1.0), "good").starts_with("Too few"));
     }
 

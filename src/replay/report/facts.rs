@@ -72,6 +72,16 @@ impl Case<'_> {
         }
     }
 
+    /// `keep`, or `reject: missing+excess`.
+    pub fn verdict(&self) -> String {
+        let (verdict, reasons) = (self.part.verdict, self.part.reasons);
+        if reasons.is_empty() {
+            verdict.to_string()
+        } else {
+            format!("{verdict}: {reasons}")
+        }
+    }
+
     /// The largest share of a limit that the part uses up: above 1 it is rejected. Infinite where it is rejected for
     /// something that has no limit; `None` where it was kept without being judged.
     pub fn severity(&self) -> Option<f64> {

@@ -2,9 +2,8 @@
 
 use maud::{Markup, html};
 
-use super::agreement::verdict;
+use super::album::Album;
 use super::facts::{Case, Facts, Wrong};
-use super::picture::{Album, Picture};
 use super::words::mm;
 use crate::recording::RecordingError;
 
@@ -21,8 +20,8 @@ pub fn gallery(facts: &Facts<'_>, album: &mut Album<'_>) -> Result<Markup, Recor
     let misses = wrong(facts, Wrong::Miss);
     let false_rejects = wrong(facts, Wrong::FalseReject);
     let nearest = nearest(facts);
-    let key = "The thin line is the taught outline; what is missing is hatched one way, what is too much the other way; a ring marks \
-               the worst point of each.";
+    let key = "The thin line is the taught outline. What is missing is hatched upwards (/), what is too much downwards (\\); a ring with \
+               the figure in mm marks the worst point where more than half of a limit is used up.";
     Ok(html! {
         p { (key) }
         @if facts.labels.is_some() {
@@ -54,10 +53,14 @@ fn nearest<'f>(facts: &'f Facts<'_>) -> Vec<&'f Case<'f>> {
     near.into_iter().map(|(_, case)| case).collect()
 }
 
-fn sheet(cases: &[&Case<'_>], most: usize, album: &mut Album<'_>) -> Result<Markup, RecordingError> {
+fn sheet(
+    cases: &[&Case<'_>],
+    most: usize,
+    album: &mut Album<'_>,
+) -> Result<Markup, RecordingError> {
     let mut shown = Vec::new();
     for case in cases.iter().take(most) {
-        if let Some(picture) = album.part(case.part)? {
+        if let Some(picture) = album.part(case)? {
             shown.push((*case, picture));
         }
     }
@@ -70,22 +73,22 @@ fn sheet(cases: &[&Case<'_>], most: usize, album: &mut Album<'_>) -> Result<Mark
     })
 }
 
-fn card(case: &Case<'_>, picture: &Picture) -> Markup {
+fn card(case: &Case<'_>, picture: &Markup) -> Markup {
     let part = case.part;
     html! {
         figure {
-            (image(picture, &describe(case)))
+            (picture)
             figcaption {
                 @match case.wrong() {
                     Some(Wrong::Miss) => span.tag.miss { "miss" },
                     Some(Wrong::FalseReject) => span.tag.false-reject { "false reject" },
                     None => {},
                 }
-                b { "part " (part.number) } ", " (verdict(case)) br;
+                b { "part " (part.number) } ", " (case.verdict()) br;
                 (format!("{:.1} mm along, {:.1} mm across", part.along_mm, part.across_mm))
                 @if let Some(figures) = &case.figures {
                     br; "missing " (mm(figures.missing_mm)) " of " (mm(figures.missing_limit_mm))
-                    " mm, excess " (mm(figures.excess_mm)) " of " (mm(figures.excess_limit_mm)) " mm"
+                    ", excess " (mm(figures.excess_mm)) " of " (mm(figures.excess_limit_mm)) " mm"
                 }
                 @if let Some(label) = case.label {
                     br; "label: " (label.verdict)
@@ -94,13 +97,4 @@ fn card(case: &Case<'_>, picture: &Picture) -> Markup {
             }
         }
     }
-}
-
-fn describe(case: &Case<'_>) -> String {
-    format!("Part {} with the taught outline, what is missing and what is too much: {}", case.part.number, verdict(case))
-}
-
-/// A picture of the page.
-pub fn image(picture: &Picture, alt: &str) -> Markup {
-    html! { img src=(picture.uri) width=(picture.width_px) height=(picture.height_px) alt=(alt); }
 }

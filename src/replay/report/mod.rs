@@ -11,10 +11,12 @@ pub mod picture;
 pub mod words;
 
 mod agreement;
+pub mod album;
 mod belt;
 mod counts;
 mod drift;
 mod gallery;
+mod overlay;
 mod source;
 mod spread;
 mod steps;
@@ -31,9 +33,9 @@ use crate::health::Durations;
 use crate::recording::{Label, Recording, RecordingError};
 use crate::settings::Settings;
 use crate::units::Micros;
+use album::Album;
 use facts::Facts;
 use page::{Section, page};
-use picture::Album;
 use words::counted;
 
 /// What a report tells of.
@@ -59,24 +61,49 @@ impl Report<'_> {
     ///
     /// # Errors
     /// Those of reading the frames that are shown.
-    pub fn html(&self, recording: &Recording, artist: Artist<'_>) -> Result<String, RecordingError> {
+    pub fn html(
+        &self,
+        recording: &Recording,
+        artist: Artist<'_>,
+    ) -> Result<String, RecordingError> {
         let facts = Facts::gather(self.settings, self.outcome, self.labels);
         let mut album = Album::new(recording, artist);
-        let unseen: Vec<Stretch> = self.outcome.unseen.iter().map(|(stretch, _)| *stretch).collect();
+        let unseen: Vec<Stretch> = self
+            .outcome
+            .unseen
+            .iter()
+            .map(|(stretch, _)| *stretch)
+            .collect();
         let section = |id, title, body| Section { id, title, body };
         let sections = [
             section("counts", "Counts", counts::counts(self)),
-            section("agreement", "Misses and false rejects", agreement::agreement(&facts)),
+            section(
+                "agreement",
+                "Misses and false rejects",
+                agreement::agreement(&facts),
+            ),
             section("spread", "Bites and burrs", spread::spread(&facts)),
             section("drift", "Margin over time", drift::drift(&facts)),
             section("reasons", "Rejects by reason", counts::reasons(self)),
             section("belt", "Belt map", belt::belt(&facts, &unseen)),
-            section("gallery", "Parts to look at", gallery::gallery(&facts, &mut album)?),
+            section(
+                "gallery",
+                "Parts to look at",
+                gallery::gallery(&facts, &mut album)?,
+            ),
             section("steps", "Step by step", steps::steps(&facts, &mut album)?),
-            section("times", "Time for a frame", times::times(self.took, self.settings.latency_us())),
+            section(
+                "times",
+                "Time for a frame",
+                times::times(self.took, self.settings.latency_us()),
+            ),
             section("settings", "Settings", source::settings(self.sources)),
         ];
-        Ok(page(&format!("Replay of {}", self.name), &self.lead(), &sections))
+        Ok(page(
+            &format!("Replay of {}", self.name),
+            &self.lead(),
+            &sections,
+        ))
     }
 
     /// The few figures that are asked for first.

@@ -1,5 +1,6 @@
 //! The page around a report: one file, no script, nothing from outside.
 
+use super::overlay::HATCH_PX;
 use maud::{DOCTYPE, Markup, PreEscaped, html};
 
 /// A part of the page.
@@ -61,11 +62,23 @@ fn patterns() -> Markup {
                     rect.pattern-ground width="6" height="6" {}
                     rect.pattern-bad width="3" height="6" {}
                 }
+                @for px in HATCH_PX { (over_photo("missing", px, 45)) (over_photo("excess", px, -45)) }
                 pattern #hatch-unseen width="7" height="7" patternUnits="userSpaceOnUse" patternTransform="rotate(-45)" {
                     rect.pattern-ground width="7" height="7" {}
                     rect.pattern-unseen width="2" height="7" {}
                 }
             }
+        }
+    }
+}
+
+/// Lines over a photograph, `px` camera pixels wide, turned by `deg`.
+fn over_photo(kind: &str, px: usize, deg: i32) -> Markup {
+    let (step, height) = (4 * px, 4 * px);
+    html! {
+        pattern id={ (kind) "-" (px) } width=(step) height=(height) patternUnits="userSpaceOnUse"
+            patternTransform={ "rotate(" (deg) ")" } {
+            rect class={ "pattern-" (kind) } width=(2 * px) height=(height) {}
         }
     }
 }
@@ -84,7 +97,7 @@ pub fn table(head: &[&str], numbers: &[usize], rows: &[Vec<String>]) -> Markup {
     let class = |column: usize| numbers.contains(&column).then_some("number");
     html! {
         div.wide {
-            table {
+            table.long[head.len() > 6] {
                 thead { tr { @for (k, name) in head.iter().enumerate() { th scope="col" class=[class(k)] { (name) } } } }
                 tbody {
                     @for row in rows {

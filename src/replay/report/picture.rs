@@ -1,4 +1,4 @@
-//! Pictures inside the page: drawn from the recording once more, kept small, written as data URIs.
+//! Pictures inside the page: kept small, written as data URIs.
 
 use std::io::Cursor;
 
@@ -6,16 +6,14 @@ use base64::prelude::{BASE64_STANDARD, Engine};
 use image::codecs::jpeg::JpegEncoder;
 use image::codecs::png::{CompressionType, FilterType, PngEncoder};
 use image::imageops::{self, FilterType as Resize};
-use image::{DynamicImage, GrayImage, RgbImage};
+use image::{GrayImage, Luma};
+use maud::{Markup, html};
 
-use crate::belt::Part;
-use crate::frames::Frame;
-use crate::recording::{Recording, RecordingError};
-use crate::replay::Artist;
+use crate::frames::Gray;
 
 /// Wider pictures are made smaller.
 const WIDEST_PX: u32 = 640;
-const JPEG_QUALITY: u8 = 82;
+const JPEG_QUALITY: u8 = 85;
 
 /// A picture as the page holds it.
 #[derive(Clone, Debug, PartialEq)]
@@ -29,18 +27,10 @@ pub struct Picture {
 }
 
 impl Picture {
-    /// A drawing or a photograph.
-    pub fn of_colour(image: RgbImage) -> Self {
-        let small = shrunk(DynamicImage::ImageRgb8(image));
-        Self::encoded("image/jpeg", &small, |bytes| {
-            small.write_with_encoder(JpegEncoder::new_with_quality(bytes, JPEG_QUALITY))
-        })
-    }
-
     /// A gray picture; one of black and white keeps its sharp edges.
     pub fn of_gray(image: GrayImage) -> Self {
         let sharp = image.pixels().all(|pixel| matches!(pixel.0[0], 0 | 255));
-        let small = shrunk(DynamicImage::ImageLuma8(image));
+        let small = shrunk(image);
         if sharp {
             Self::encoded("image/png", &small, |bytes| {
                 let (speed, filter) = (CompressionType::Best, FilterType::NoFilter);
@@ -55,101 +45,103 @@ impl Picture {
 
     fn encoded(
         kind: &str,
-        image: &DynamicImage,
+        image: &GrayImage,
         write: impl FnOnce(&mut Cursor<Vec<u8>>) -> image::ImageResult<()>,
     ) -> Self {
         let mut bytes = Cursor::new(Vec::new());
         write(&mut bytes).expect("a small picture can be written to memory");
+        let text = BASE64_STANDARD.encode(bytes.get_ref());
         Self {
-            uri: format!(
-                "data:{kind};base64,{}",
-                BASE64_STANDARD.encode(bytes.get_ref())
-            ),
+            uri: format!("data:{kind};base64,{text}"),
             width_px: image.width(),
             height_px: image.height(),
         }
     }
 }
 
-fn shrunk(image: DynamicImage) -> DynamicImage {
-    let (width, height) = (image.width(), image.height());
+fn shrunk(image: GrayImage) -> GrayImage {
+    let (width, height) = image.dimensions();
     let longest = width.max(height);
     if longest <= WIDEST_PX {
         return image;
     }
     let share = f64::from(WIDEST_PX) / f64::from(longest);
     let [width, height] = [width, height].map(|px| ((f64::from(px) * share).round() as u32).max(1));
-    match image {
-        DynamicImage::ImageRgb8(rgb) => imageops::resize(&rgb, width, height, Resize::Triangle).into(),
-        other => imageops::resize(&other.to_luma8(), width, height, Resize::Triangle).into(),
-    }
+    imageops::resize(&image, width, height, Resize::Triangle)
 }
 
-/// Reads frames again for the parts that are shown.
-pub struct Album<'a> {
-    recording: &'a Recording,
-    artist: Artist<'a>,
-    frame: Frame,
+/// A picture of the page.
+pub fn image(picture: &Picture, alt: &str) -> Markup {
+    html! { img src=(picture.uri) width=(picture.width_px) height=(picture.height_px) alt=(alt); }
 }
 
-impl<'a> Album<'a> {
-    /// Pictures from `recording`, drawn by `artist`.
-    pub fn new(recording: &'a Recording, artist: Artist<'a>) -> Self {
+/// A piece of a region of interest.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Crop {
+    /// First column.
+    pub left_px: usize,
+    /// First row.
+    pub top_px: usize,
+    /// Columns.
+    pub width_px: usize,
+    /// Rows.
+    pub height_px: usize,
+}
+
+impl Crop {
+    /// A box (left, top, right, bottom) and `around_px` on each side, as far as the picture goes.
+    pub fn around(box_px: [usize; 4], around_px: usize, picture: Gray<'_>) -> Self {
+        let [left, top, right, bottom] = box_px;
+        let (left_px, top_px) = (
+            left.saturating_sub(around_px),
+            top.saturating_sub(around_px),
+        );
         Self {
-            recording,
-            artist,
-            frame: Frame::default(),
+            left_px,
+            top_px,
+            width_px: (right + around_px).min(picture.width_px) - left_px,
+            height_px: (bottom + around_px).min(picture.height_px) - top_px,
         }
     }
 
-    /// The part with outline, bite and burr; `None` when its frame is not part of the recording.
-    ///
-    /// # Errors
-    /// Those of reading the frame.
-    pub fn part(&mut self, part: &Part) -> Result<Option<Picture>, RecordingError> {
-        let there = self.turn_to(part)?;
-        Ok(there.then(|| Picture::of_colour(self.artist.draw_part(&self.frame, part))))
-    }
-
-    /// What each step made of the part, with the step's name.
-    ///
-    /// # Errors
-    /// Those of reading the frame.
-    pub fn steps(&mut self, part: &Part) -> Result<Vec<(&'static str, Picture)>, RecordingError> {
-        if !self.turn_to(part)? {
-            return Ok(Vec::new());
-        }
-        let steps = self.artist.steps(&self.frame, part);
-        Ok(steps
-            .into_iter()
-            .map(|(name, image)| (name, Picture::of_gray(image)))
-            .collect())
-    }
-
-    fn turn_to(&mut self, part: &Part) -> Result<bool, RecordingError> {
-        let Some(k) = self.recording.frame_at(part.spoken_us) else {
-            return Ok(false);
-        };
-        if self.frame.captured_us != part.spoken_us || self.frame.pixels.is_empty() {
-            self.recording.read_into(k, &mut self.frame)?;
-        }
-        Ok(true)
+    /// The piece.
+    pub fn cut(self, picture: Gray<'_>) -> GrayImage {
+        GrayImage::from_fn(self.width_px as u32, self.height_px as u32, |x, y| {
+            let row = picture.row(self.top_px + y as usize);
+            Luma([row[self.left_px + x as usize]])
+        })
     }
 }
 
 #[cfg(test)]
 mod tests {
     use super::*;
-    use image::{Luma, Rgb};
 
     #[test]
     fn pictures_are_shrunk_and_can_be_read_back() {
-        let wide = Picture::of_colour(RgbImage::from_pixel(1280, 100, Rgb([200, 30, 30])));
+        let wide = Picture::of_gray(GrayImage::from_pixel(1280, 100, Luma([90])));
         assert_eq!((wide.width_px, wide.height_px), (640, 50));
         let mask = GrayImage::from_fn(40, 30, |x, _| Luma([if x < 20 { 0 } else { 255 }]));
         let sharp = Picture::of_gray(mask.clone());
         let bytes = sharp.uri.strip_prefix("data:image/png;base64,").unwrap();
         let bytes = BASE64_STANDARD.decode(bytes).unwrap();
         assert_eq!(image::load_from_memory(&bytes).unwrap().to_luma8(), mask);
+    }
+
+    #[test]
+    fn a_crop_stays_inside_the_picture() {
+        let pixels = vec![0; 50 * 20];
+        let picture = Gray {
+            pixels: &pixels,
+            width_px: 50,
+            height_px: 20,
+            stride_px: 50,
+        };
+        let crop = Crop::around([2, 3, 45, 20], 10, picture);
+        assert_eq!(
+            (crop.left_px, crop.top_px, crop.width_px, crop.height_px),
+            (0, 0, 50, 20)
+        );
+        assert_eq!(crop.cut(picture).dimensions(), (50, 20));
     }
 }

@@ -7,8 +7,6 @@ use std::path::{Path, PathBuf};
 use maud::{Markup, html};
 use sha2::{Digest, Sha256};
 
-use super::page::table;
-
 /// A file that decided what came out.
 #[derive(Clone, Debug, PartialEq)]
 pub struct SourceFile {
@@ -41,10 +39,11 @@ fn hex(bytes: &[u8]) -> String {
 
 /// The section: the settings file first, then the taught shapes.
 pub fn settings(sources: &[SourceFile]) -> Markup {
-    let row = |source: &SourceFile| vec![source.path.display().to_string(), source.sha256.clone()];
-    let rows: Vec<_> = sources.iter().map(row).collect();
     html! {
-        (table(&["file", "SHA-256"], &[], &rows))
+        p { "The files that decided what came out, with their SHA-256:" }
+        ul.files {
+            @for source in sources { li { (source.path.display()) br; code { (source.sha256) } } }
+        }
         @if let Some(text) = sources.first().and_then(|source| source.text.as_ref()) {
             pre { (text) }
         }

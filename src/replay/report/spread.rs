@@ -34,9 +34,14 @@ pub fn spread(facts: &Facts<'_>) -> Markup {
     let [good, bad] = facts.side_names();
     let met = |shape: usize| {
         let of_it = |figures: Figures| figures.shape == shape;
-        facts.cases.iter().any(|case| case.figures.is_some_and(of_it))
+        facts
+            .cases
+            .iter()
+            .any(|case| case.figures.is_some_and(of_it))
     };
-    let shapes: Vec<usize> = (0..facts.settings.shapes.len()).filter(|&shape| met(shape)).collect();
+    let shapes: Vec<usize> = (0..facts.settings.shapes.len())
+        .filter(|&shape| met(shape))
+        .collect();
     if shapes.is_empty() {
         return html! { p { "No part was seen whole." } };
     }
@@ -68,7 +73,11 @@ fn chart(facts: &Facts<'_>, shape: usize, which: &Figure) -> Markup {
         .next()
         .unwrap_or_default();
     let drawing = draw(which.name, &sides, facts.side_names(), limit_mm);
-    figure(&drawing, &caption(&sides, facts.side_names(), which.name), false)
+    figure(
+        &drawing,
+        &caption(&sides, facts.side_names(), which.name),
+        false,
+    )
 }
 
 /// Where the middle and the far end of each side lie.
@@ -79,7 +88,12 @@ fn caption(sides: &[Vec<f64>; 2], names: [&str; 2], figure: &str) -> String {
         let count = counted(values.len(), "part", "parts");
         match (values.first(), values.get(values.len() / 2), values.last()) {
             (Some(first), Some(middle), Some(last)) => {
-                format!("{name}: {count}, {} to {} mm, median {}", mm(*first), mm(*last), mm(*middle))
+                format!(
+                    "{name}: {count}, {} to {} mm, median {}",
+                    mm(*first),
+                    mm(*last),
+                    mm(*middle)
+                )
             }
             _ => format!("{name}: no part"),
         }
@@ -88,22 +102,29 @@ fn caption(sides: &[Vec<f64>; 2], names: [&str; 2], figure: &str) -> String {
     format!("{figure}. {}.", each.join("; "))
 }
 
-/// Counts in equal bins from 0 on; the last one takes everything beyond.
+/// Counts in equal bins from 0 on, each with its upper end: a value on the limit lies below it, as for the judge. The last
+/// one takes everything beyond.
 fn bins(values: &[f64], width: f64) -> [usize; BINS] {
     let mut bins = [0; BINS];
     for value in values {
-        let bin = (value / width).max(0.0) as usize;
+        let bin = (value / width - 1e-9).max(0.0) as usize;
         bins[bin.min(BINS - 1)] += 1;
     }
     bins
 }
 
-/// Wide enough for all but one in fifty, and for the limit.
+/// A whole part of the limit, so that no bin lies across it; reaching over nearly all values, but no farther than some
+/// limits, since a pair that has grown together would squeeze the rest.
 fn bin_width(sides: &[Vec<f64>; 2], limit_mm: f64) -> f64 {
+    const LIMITS_SHOWN: f64 = 4.0;
     let mut all: Vec<f64> = sides.iter().flatten().copied().collect();
     all.sort_by(f64::total_cmp);
     let most = all.get(all.len() * 49 / 50).copied().unwrap_or(0.0);
-    round_step((most.max(limit_mm * 1.25) * 1.02 / BINS as f64).max(1e-3))
+    if limit_mm <= 0.0 {
+        return round_step((most / BINS as f64).max(1e-3));
+    }
+    let reach = most.clamp(limit_mm * 1.25, limit_mm * LIMITS_SHOWN);
+    limit_mm / (BINS as f64 * limit_mm / reach).floor().max(1.0)
 }
 
 fn draw(name: &str, sides: &[Vec<f64>; 2], names: [&str; 2], limit_mm: f64) -> Markup {
@@ -116,7 +137,10 @@ fn draw(name: &str, sides: &[Vec<f64>; 2], names: [&str; 2], limit_mm: f64) -> M
         (0.0, "0".to_owned()),
         (-1.0, most[1].to_string()),
     ];
-    let beyond = sides.iter().flatten().any(|value| *value >= width * BINS as f64);
+    let beyond = sides
+        .iter()
+        .flatten()
+        .any(|value| *value > width * BINS as f64);
     let marks = html! {
         @for (side, counts) in counts.iter().enumerate() {
             @for (bin, &count) in counts.iter().enumerate().filter(|(_, count)| **count > 0) {
@@ -130,7 +154,11 @@ fn draw(name: &str, sides: &[Vec<f64>; 2], names: [&str; 2], limit_mm: f64) -> M
         }
         (plot.mark_x(limit_mm, &format!("limit {} mm", mm(limit_mm))))
     };
-    let title = if beyond { format!("{name} (the last bar: that and more)") } else { name.to_owned() };
+    let title = if beyond {
+        format!("{name} (the last bar: that and more)")
+    } else {
+        name.to_owned()
+    };
     plot.draw_with(
         &format!("Distribution of {name}"),
         (&title, "parts"),
@@ -158,7 +186,7 @@ mod tests {
 
     #[test]
     fn every_value_is_in_one_bin_and_the_last_takes_the_rest() {
-        let bins = bins(&[0.0, 0.09, 0.1, 3.95, 400.0, -0.0], 0.1);
+        let bins = bins(&[0.0, 0.1, 0.101, 3.95, 400.0, -0.0], 0.1);
         assert_eq!((bins[0], bins[1], bins[39]), (3, 1, 2));
         assert_eq!(bins.iter().sum::<usize>(), 6);
     }
@@ -168,7 +196,11 @@ mod tests {
         let mut good = vec![0.3; 100];
         good.push(80.0);
         let width = bin_width(&[good, vec![]], 2.0);
-        assert!(width * BINS as f64 > 2.0 && width * (BINS as f64) < 6.0, "{width}");
+        assert!((2.5..=8.0).contains(&(width * BINS as f64)), "{width}");
+        assert!(
+            (2.0 / width).fract() < 1e-9,
+            "a bin ends at the limit: {width}"
+        );
         assert!(bin_width(&[vec![], vec![]], 0.0) > 0.0);
     }
 }

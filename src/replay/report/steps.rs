@@ -2,10 +2,8 @@
 
 use maud::{Markup, html};
 
-use super::agreement::verdict;
+use super::album::Album;
 use super::facts::{Case, Facts};
-use super::gallery::image;
-use super::picture::{Album, Picture};
 use crate::recording::RecordingError;
 use crate::shape::Verdict;
 
@@ -16,32 +14,29 @@ use crate::shape::Verdict;
 pub fn steps(facts: &Facts<'_>, album: &mut Album<'_>) -> Result<Markup, RecordingError> {
     let mut strips = Vec::new();
     for (why, case) in chosen(facts) {
-        let mut pictures = album.steps(case.part)?;
-        if let Some(judged) = album.part(case.part)? {
-            pictures.push(("judged", judged));
-        }
-        strips.push((why, case, pictures));
+        strips.push((why, case, album.steps(case)?));
     }
     Ok(html! {
         @if strips.is_empty() { p { "No part was seen whole." } }
         @for (why, case, pictures) in &strips {
-            h3 { (why) ": part " (case.part.number) ", " (verdict(case)) }
-            div.strip { @for (name, picture) in pictures { (frame(name, picture, case)) } }
+            h3 { (why) ": part " (case.part.number) ", " (case.verdict()) }
+            div.strip { @for (name, picture) in pictures { figure { (picture) figcaption { (name) } } } }
         }
     })
-}
-
-fn frame(name: &str, picture: &Picture, case: &Case<'_>) -> Markup {
-    let alt = format!("Part {} after the step: {name}", case.part.number);
-    html! { figure { (image(picture, &alt)) figcaption { (name) } } }
 }
 
 /// Up to three parts, each for a reason.
 fn chosen<'f>(facts: &'f Facts<'_>) -> Vec<(&'static str, &'f Case<'f>)> {
     let with = |verdict: Verdict| {
-        let cases = facts.cases.iter().filter(move |case| case.part.verdict == verdict);
-        let finite = |case: &&Case<'_>| Some(case.severity()?).filter(|severity| severity.is_finite());
-        let mut cases: Vec<_> = cases.filter_map(|case| Some((finite(&case)?, case))).collect();
+        let cases = facts
+            .cases
+            .iter()
+            .filter(move |case| case.part.verdict == verdict);
+        let finite =
+            |case: &&Case<'_>| Some(case.severity()?).filter(|severity| severity.is_finite());
+        let mut cases: Vec<_> = cases
+            .filter_map(|case| Some((finite(&case)?, case)))
+            .collect();
         cases.sort_by(|a, b| a.0.total_cmp(&b.0));
         cases.into_iter().map(|(_, case)| case).collect::<Vec<_>>()
     };
@@ -51,7 +46,13 @@ fn chosen<'f>(facts: &'f Facts<'_>) -> Vec<(&'static str, &'f Case<'f>)> {
     let named = [
         ("An ordinary good part", ordinary),
         ("The kept part nearest to a limit", nearest),
-        ("The rejected part farthest beyond its limit", rejected.last().copied()),
+        (
+            "The rejected part farthest beyond its limit",
+            rejected.last().copied(),
+        ),
     ];
-    named.into_iter().filter_map(|(why, case)| Some((why, case?))).collect()
+    named
+        .into_iter()
+        .filter_map(|(why, case)| Some((why, case?)))
+        .collect()
 }

@@ -54,7 +54,13 @@ fn draw(took: &Durations, latency_us: Micros) -> Markup {
         (plot.mark_x(latency, "takes effect"))
     };
     let ticks = plot.y.ticks(5);
-    plot.draw_with("Time taken for a frame", ("ms for a frame", "frames"), &log_ticks(from, to), &ticks, &marks)
+    plot.draw_with(
+        "Time taken for a frame",
+        ("ms for a frame", "frames"),
+        &log_ticks(from, to),
+        &ticks,
+        &marks,
+    )
 }
 
 /// 1, 2 and 5 of each power of ten between two logarithms of microseconds, written in milliseconds.
@@ -63,7 +69,9 @@ fn log_ticks(from: f64, to: f64) -> Vec<(f64, String)> {
     let values = decades.flat_map(|decade| [1.0, 2.0, 5.0].map(|m| m * 10f64.powi(decade)));
     let inside = values.filter(|us| (from..=to).contains(&us.log10()));
     // Rust writes the shortest decimal that reads back the same.
-    inside.map(|us| (us.log10(), format!("{}", us / 1e3))).collect()
+    inside
+        .map(|us| (us.log10(), format!("{}", us / 1e3)))
+        .collect()
 }
 
 #[cfg(test)]
@@ -72,7 +80,10 @@ mod tests {
 
     #[test]
     fn ticks_are_in_milliseconds() {
-        let texts: Vec<_> = log_ticks(2.9, 4.4).into_iter().map(|(_, text)| text).collect();
+        let texts: Vec<_> = log_ticks(2.9, 4.4)
+            .into_iter()
+            .map(|(_, text)| text)
+            .collect();
         assert_eq!(texts, ["1", "2", "5", "10", "20"]);
     }
 

@@ -86,8 +86,8 @@ impl Nouns {
             let rule = percent(rule_of_three(n).min(1.0), Rounding::Up);
             let exact = percent(count.at_most(Share::P95), Rounding::Up);
             format!(
-                "in the head, by the rule of three (Eypasch et al., BMJ 311, 1995): 3 / {n} is {rule}; it stands for the \
-                 one-sided bound, exactly {exact}"
+                "By the rule of three (Eypasch et al., BMJ 311, 1995) 3 / {n} = {rule}, which stands for the one-sided bound: \
+                 exactly {exact}."
             )
         })
     }
@@ -112,7 +112,11 @@ pub const FALSE_REJECTS: Nouns = Nouns {
 /// Hundredths of a millimetre; zero has no sign.
 pub fn mm(value: f64) -> String {
     let text = format!("{value:.2}");
-    if text == "-0.00" { "0.00".to_owned() } else { text }
+    if text == "-0.00" {
+        "0.00".to_owned()
+    } else {
+        text
+    }
 }
 
 /// `1 part`, `2 parts`.
@@ -153,7 +157,10 @@ mod tests {
             "no bad part at all, so nothing can be said"
         );
         let rule = MISSES.in_the_head(Count::new(0, 300)).unwrap();
-        assert!(rule.contains("3 / 300 is 1.0 %") && rule.contains("exactly 1.0 %"), "{rule}");
+        assert!(
+            rule.contains("3 / 300 = 1.0 %") && rule.contains("exactly 1.00 %"),
+            "{rule}"
+        );
         assert_eq!(MISSES.in_the_head(Count::new(1, 300)), None);
     }
 }
