@@ -4,7 +4,7 @@
 use crate::belt::{Cut, Extent, Stretch, View};
 use crate::frames::Frame;
 use crate::settings::{self, FaceDown, Geometry, Settings, Travel};
-use crate::shape::{Common, Judge, Judged, Limits, Reason, Silhouette};
+use crate::shape::{Common, Gauged, Judge, Judged, Limits, Reason, Silhouette};
 use crate::stage::{self, Level, Region, Stage};
 use crate::units::Micros;
 
@@ -53,11 +53,11 @@ fn cut(geometry: &Geometry, [left, top, right, bottom]: [i32; 4]) -> Cut {
 /// Like [`cut`] for the taught shape that lies on a region. Light that falls off, and a top-hat that knows only half of
 /// its element's surroundings there, can hide the strip of a part along the picture's edge: the region keeps off the edge,
 /// but the shape that fits it reaches over.
-fn cut_of_shape(geometry: &Geometry, judge: &Judge, judged: &Judged) -> Cut {
+fn cut_of_shape(geometry: &Geometry, gauged: &Gauged, judged: &Judged) -> Cut {
     if judged.reasons.has(Reason::Unknown) || judged.reasons.has(Reason::Touching) {
         return Cut::default();
     }
-    let [left, top, right, bottom] = judge.taught_box();
+    let [left, top, right, bottom] = gauged.taught_px;
     cut(
         geometry,
         [
@@ -67,6 +67,72 @@ fn cut_of_shape(geometry: &Geometry, judge: &Judge, judged: &Judged) -> Cut {
             bottom - OVER_PX,
         ],
     )
+}
+
+/// One region of one frame as it was measured, before any limit was asked; in millimetres on a belt that reads 0.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Sight {
+    extent: Extent,
+    along_mm: f64,
+    across_mm: f64,
+    area_mm2: f64,
+    cut: Cut,
+    gauged: Option<Gauged>,
+}
+
+impl Sight {
+    /// `gauge` is asked for what the picture's edge does not cut.
+    pub fn of(geometry: &Geometry, region: &Region, gauge: impl FnOnce() -> Gauged) -> Self {
+        let box_px = [region.x_min, region.y_min, region.x_max, region.y_max].map(|px| px as i32);
+        let cut = cut(geometry, box_px);
+        Self {
+            extent: extent(geometry, region),
+            along_mm: -geometry.behind_upstream_mm(region.centroid_x + 0.5),
+            across_mm: geometry.below_top_mm(region.centroid_y + 0.5),
+            area_mm2: geometry.scale.mm2(region.area_px as f64),
+            cut,
+            gauged: (!cut.any()).then(gauge),
+        }
+    }
+}
+
+/// What makes verdicts of figures.
+#[derive(Clone, Debug)]
+pub struct Rules {
+    geometry: Geometry,
+    limits: Vec<Limits>,
+    common: Common,
+}
+
+impl Rules {
+    /// The settings' own.
+    pub fn of(settings: &Settings) -> Self {
+        let shapes = settings.shapes.iter();
+        Self {
+            geometry: settings.geometry(),
+            limits: shapes.map(|shape| limits(settings, shape)).collect(),
+            common: common(settings),
+        }
+    }
+
+    /// The verdict on one region.
+    pub fn spot(&self, sight: &Sight) -> Spot {
+        let mut cut = sight.cut;
+        let mut judged = None;
+        if let Some(gauged) = &sight.gauged {
+            let verdict = gauged.verdict(&self.limits[gauged.shape], &self.common);
+            cut = cut_of_shape(&self.geometry, gauged, &verdict);
+            judged = Some(verdict).filter(|_| !cut.any());
+        }
+        Spot {
+            extent: sight.extent,
+            along_mm: sight.along_mm,
+            across_mm: sight.across_mm,
+            area_mm2: sight.area_mm2,
+            cut,
+            judged,
+        }
+    }
 }
 
 /// One region of one frame, in millimetres on a belt that reads 0.
@@ -139,25 +205,34 @@ pub fn limits(settings: &Settings, shape: &settings::Shape) -> Limits {
     }
 }
 
+/// A judge for these settings. `taught` has one silhouette for each of `settings.shapes`.
+pub fn judge(settings: &Settings, taught: &[Silhouette]) -> Judge {
+    let shapes = settings.shapes.iter().map(|shape| limits(settings, shape));
+    Judge::new(
+        taught.iter().cloned().zip(shapes).collect(),
+        common(settings),
+    )
+}
+
 /// Stage and judge with their buffers.
 pub struct Inspector {
     geometry: Geometry,
     stage: Stage,
     judge: Judge,
+    rules: Rules,
 }
 
 impl Inspector {
     /// Makes every buffer. `taught` has one silhouette for each of `settings.shapes`.
     pub fn new(settings: &Settings, taught: &[Silhouette], level: Level) -> Self {
         let geometry = settings.geometry();
-        let shapes = settings.shapes.iter().map(|shape| limits(settings, shape));
-        let shapes = taught.iter().cloned().zip(shapes).collect();
-        let mut judge = Judge::new(shapes, common(settings));
+        let mut judge = judge(settings, taught);
         judge.reserve(geometry.window.width_px, geometry.window.height_px);
         Self {
             geometry,
             stage: Stage::new(&stage::Plan::of(settings), level),
             judge,
+            rules: Rules::of(settings),
         }
     }
 
@@ -169,23 +244,9 @@ impl Inspector {
         look.specks = scene.specks;
         look.spots.clear();
         for region in &scene.regions {
-            let box_px =
-                [region.x_min, region.y_min, region.x_max, region.y_max].map(|px| px as i32);
-            let mut cut = cut(&self.geometry, box_px);
             let runs = &scene.runs[region.runs.clone()];
-            let mut judged = (!cut.any()).then(|| self.judge.judge(region, runs));
-            if let Some(of) = &judged {
-                cut = cut_of_shape(&self.geometry, &self.judge, of);
-                judged = judged.filter(|_| !cut.any());
-            }
-            look.spots.push(Spot {
-                extent: extent(&self.geometry, region),
-                along_mm: -self.geometry.behind_upstream_mm(region.centroid_x + 0.5),
-                across_mm: self.geometry.below_top_mm(region.centroid_y + 0.5),
-                area_mm2: self.geometry.scale.mm2(region.area_px as f64),
-                cut,
-                judged,
-            });
+            let sight = Sight::of(&self.geometry, region, || self.judge.gauge(region, runs));
+            look.spots.push(self.rules.spot(&sight));
         }
     }
 }

@@ -37,4 +37,6 @@ pub mod recording;
 
 pub mod replay;
 
+pub mod tuning;
+
 pub mod cli;

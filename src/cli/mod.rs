@@ -12,14 +12,19 @@
 
 mod caution;
 mod check;
+mod compare;
 mod draw;
 mod files;
 mod interrupt;
 mod judge;
+mod mark;
+mod propose;
 mod replay;
 mod report;
 mod results;
+mod sorting;
 mod station;
+mod sweep;
 mod teach;
 mod timeline;
 
@@ -45,6 +50,9 @@ enum Command {
     Check(check::Args),
     Teach(teach::Args),
     Judge(judge::Args),
+    Mark(mark::Args),
+    Compare(compare::Args),
+    Sweep(sweep::Args),
     Draw(draw::Args),
 }
 
@@ -76,6 +84,9 @@ impl Cli {
             Command::Check(args) => args.run(&mut out),
             Command::Teach(args) => args.run(&mut out),
             Command::Judge(args) => args.run(&mut out),
+            Command::Mark(args) => args.run(&mut out),
+            Command::Compare(args) => args.run(&mut out),
+            Command::Sweep(args) => args.run(&mut out),
             Command::Draw(args) => args.run(),
         };
         let flushed = out.flush();

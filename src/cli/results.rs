@@ -14,12 +14,11 @@ use crate::frames::Frame;
 use crate::recording::{Label, Recording};
 use crate::reject::line::{LineCounts, LineFault, Signal, SignalWriter};
 use crate::reject::{Loss, Why};
-use crate::replay::{Match, Outcome, Row, Score, parts_csv, rows, score, summarize};
+use crate::replay::{
+    LABEL_GATE, Match, Outcome, Placed, Row, Score, parts_csv, rows, score, summarize,
+};
 use crate::settings::{Policy, Settings};
 use crate::shape::Verdict;
-
-/// A label may lie this share of the part pitch outside the box of its part.
-const LABEL_GATE: f64 = 0.25;
 
 /// A finished replay.
 pub(super) struct Results<'a> {
@@ -94,7 +93,8 @@ impl Results<'_> {
     }
 
     pub(super) fn score(&self, labels: &[Label]) -> Score {
-        let parts = self.parts();
+        let parts = self.outcome.parts.iter();
+        let parts: Vec<Placed> = parts.map(|(part, _)| Placed::from(part)).collect();
         let unseen = self.outcome.unseen.iter().map(|(stretch, _)| *stretch);
         let rejected: Vec<Stretch> = match self.settings().belt.unseen {
             Policy::Reject => unseen.collect(),
@@ -106,10 +106,6 @@ impl Results<'_> {
             &rejected,
             self.settings().belt.part_pitch_mm * LABEL_GATE,
         )
-    }
-
-    fn parts(&self) -> Vec<Part> {
-        self.outcome.parts.iter().map(|(part, _)| *part).collect()
     }
 
     pub(super) fn print_table(

@@ -1,6 +1,8 @@
 //! What most commands begin with: settings and the shapes they name, checked together.
 
-use std::path::Path;
+use std::collections::HashMap;
+use std::path::{Path, PathBuf};
+use std::sync::Arc;
 
 use anyhow::Context;
 
@@ -17,7 +19,7 @@ use crate::stage::Level;
 pub(super) struct Station {
     pub(super) loaded: Loaded,
     pub(super) taught: Vec<Silhouette>,
-    level: Level,
+    pub(super) level: Level,
 }
 
 impl Station {
@@ -71,68 +73,118 @@ pub(super) fn frame_size(settings: &Settings) -> SizePx {
 
 /// The shapes that the settings name, at the picture's scale.
 pub(super) fn taught(loaded: &Loaded) -> Result<Vec<Silhouette>, SettingsError> {
-    let mut silhouettes = Vec::new();
-    let mut problems = Vec::new();
-    for shape in 0..loaded.settings.shapes.len() {
-        match one_shape(loaded, shape) {
-            Ok((silhouette, found)) => {
-                silhouettes.push(silhouette);
-                problems.extend(found);
+    let taught = Shelf::default().taught(loaded)?;
+    Ok(taught.iter().map(|shape| (**shape).clone()).collect())
+}
+
+/// Taught shapes that were read, each at the scales that were asked for. Equal ones are the same `Arc`.
+#[derive(Default)]
+pub(super) struct Shelf {
+    known: HashMap<(PathBuf, u64), Shelved>,
+}
+
+/// A shape with what the settings are checked against.
+#[derive(Clone)]
+struct Shelved {
+    silhouette: Arc<Silhouette>,
+    model: Arc<Model>,
+    sizes: Sizes,
+}
+
+/// The widest inside by a square, and by a disc.
+#[derive(Clone, Copy)]
+struct Sizes {
+    size: PartSize,
+    widest_disc_mm: f64,
+}
+
+impl Shelf {
+    /// The shapes that the settings name, at the picture's scale.
+    pub(super) fn taught(
+        &mut self,
+        loaded: &Loaded,
+    ) -> Result<Vec<Arc<Silhouette>>, SettingsError> {
+        let mut silhouettes = Vec::new();
+        let mut problems = Vec::new();
+        for shape in 0..loaded.settings.shapes.len() {
+            match self.one_shape(loaded, shape) {
+                Ok((silhouette, found)) => {
+                    silhouettes.push(silhouette);
+                    problems.extend(found);
+                }
+                Err(problem) => problems.push(problem),
             }
-            Err(problem) => problems.push(problem),
         }
+        if !problems.is_empty() {
+            return Err(SettingsError::Bad(Problems::sorted(problems)));
+        }
+        Ok(silhouettes)
     }
-    if !problems.is_empty() {
-        return Err(SettingsError::Bad(Problems::sorted(problems)));
+
+    /// One shape with everything that the settings get wrong about its size.
+    fn one_shape(
+        &mut self,
+        loaded: &Loaded,
+        shape: usize,
+    ) -> Result<(Arc<Silhouette>, Vec<Problem>), Problem> {
+        let settings = &loaded.settings;
+        let read = self.read(loaded.shape_path(shape), settings.camera.mm_per_px);
+        let Shelved {
+            silhouette,
+            model,
+            sizes,
+        } = read.map_err(|error| {
+            let expected = "expected a taught shape, made by `beltwright teach`";
+            loaded.problem(
+                &format!("shape[{shape}].file"),
+                format!("{expected}; {error:#}"),
+            )
+        })?;
+        let mut size = sizes.size;
+        if settings.picture.element == ElementKind::Octagon {
+            size.inside_mm = sizes.widest_disc_mm;
+        }
+        let mut problems = loaded.part_problems(shape, &size);
+        let limits = limits(settings, &settings.shapes[shape]);
+        let found = findings(&model, &limits, silhouette.mm_per_px);
+        let problem = |finding: Finding| {
+            loaded.problem(&format!("shape[{shape}].{}", finding.key), finding.problem)
+        };
+        problems.extend(found.into_iter().map(problem));
+        Ok((silhouette, problems))
     }
-    Ok(silhouettes)
+
+    fn read(&mut self, file: PathBuf, mm_per_px: f64) -> anyhow::Result<Shelved> {
+        let key = (file, mm_per_px.to_bits());
+        if let Some(known) = self.known.get(&key) {
+            return Ok(known.clone());
+        }
+        let silhouette = Taught::read(&key.0)?.silhouette.resampled(mm_per_px)?;
+        let read = Shelved {
+            sizes: size_of(&silhouette)?,
+            model: Arc::new(Model::new(silhouette.clone())),
+            silhouette: Arc::new(silhouette),
+        };
+        self.known.insert(key, read.clone());
+        Ok(read)
+    }
 }
 
-/// One shape with everything that the settings get wrong about its size.
-fn one_shape(loaded: &Loaded, shape: usize) -> Result<(Silhouette, Vec<Problem>), Problem> {
-    let wrong = |error: anyhow::Error| {
-        let expected = "expected a taught shape, made by `beltwright teach`";
-        loaded.problem(
-            &format!("shape[{shape}].file"),
-            format!("{expected}; {error:#}"),
-        )
-    };
-    let read = || {
-        let stored = Taught::read(&loaded.shape_path(shape))?.silhouette;
-        let silhouette = stored.resampled(loaded.settings.camera.mm_per_px)?;
-        let size = size_of(&silhouette, loaded.settings.picture.element)?;
-        anyhow::Ok((silhouette, size))
-    };
-    let (silhouette, size) = read().map_err(wrong)?;
-    let mut problems = loaded.part_problems(shape, &size);
-    let limits = limits(&loaded.settings, &loaded.settings.shapes[shape]);
-    let found = findings(
-        &Model::new(silhouette.clone()),
-        &limits,
-        silhouette.mm_per_px,
-    );
-    let problem = |finding: Finding| {
-        loaded.problem(&format!("shape[{shape}].{}", finding.key), finding.problem)
-    };
-    problems.extend(found.into_iter().map(problem));
-    Ok((silhouette, problems))
-}
-
-fn size_of(silhouette: &Silhouette, element: ElementKind) -> anyhow::Result<PartSize> {
+fn size_of(silhouette: &Silhouette) -> anyhow::Result<Sizes> {
     let figures = Figures::of(silhouette);
     let (region, runs) = silhouette
         .majority()
         .to_region()
         .context("the shape is empty")?;
     let (longest_px, narrowest_px) = Measurer::default().feret(&region, &runs);
-    Ok(PartSize {
-        longest_mm: longest_px * silhouette.mm_per_px,
-        narrowest_mm: narrowest_px * silhouette.mm_per_px,
-        inside_mm: match element {
-            ElementKind::Square => figures.widest_mm,
-            ElementKind::Octagon => figures.widest_disc_mm,
+    Ok(Sizes {
+        size: PartSize {
+            longest_mm: longest_px * silhouette.mm_per_px,
+            narrowest_mm: narrowest_px * silhouette.mm_per_px,
+            inside_mm: figures.widest_mm,
+            area_mm2: figures.area_mm2,
+            smallest_hole_mm2: figures.bores_mm2.iter().copied().min_by(f64::total_cmp),
         },
-        area_mm2: figures.area_mm2,
-        smallest_hole_mm2: figures.bores_mm2.iter().copied().min_by(f64::total_cmp),
+        widest_disc_mm: figures.widest_disc_mm,
     })
 }

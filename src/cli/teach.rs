@@ -7,14 +7,16 @@ use anyhow::{Context, ensure};
 use serde_json::json;
 
 use super::Outcome;
+use super::propose::{Proposals, Pupil, Sure};
 use super::station::frame_size;
 use crate::frames::{Frame, FrameSource};
 use crate::recording::{Label, Recording};
-use crate::settings::{self, Settings};
+use crate::settings::{self, Loaded, Settings};
 use crate::shape::{
     Figures, LeftOut, Lesson, Silhouette, Spread, Taught, Teacher, Verdict, read_gray,
 };
 use crate::stage::{Level, Plan, Region, Run, Stage};
+use crate::stats::Share;
 
 /// Parts that are learned from at most; more hardly change the outline.
 const MOST_PARTS: usize = 400;
@@ -48,6 +50,12 @@ pub(super) struct Args {
     /// Replace a shape that is already there
     #[arg(long)]
     replace: bool,
+    /// Limits are proposed that this share of all good parts stays below
+    #[arg(long, value_name = "PERCENT", default_value = "99.9")]
+    coverage: Share,
+    /// and with this confidence
+    #[arg(long, value_name = "PERCENT", default_value = "95")]
+    confidence: Share,
     /// Print one JSON object instead of a table
     #[arg(long)]
     json: bool,
@@ -94,16 +102,47 @@ impl Args {
         };
         taught.write(&self.out)?;
         let figures = Figures::of(&taught.silhouette);
+        let proposals = self.proposals(&loaded, &taught.silhouette, &figures)?;
         if self.json {
-            writeln!(out, "{}", in_json(&figures, lesson.as_ref()))?;
+            let mut json = in_json(&figures, lesson.as_ref());
+            if let Some(proposals) = &proposals {
+                json["proposals"] = proposals.in_json();
+            }
+            writeln!(out, "{json}")?;
         } else {
             writeln!(out, "{}", self.out.display())?;
             describe(&figures, out)?;
             if let Some(lesson) = &lesson {
                 spread(lesson, out)?;
             }
+            if let Some(proposals) = &proposals {
+                proposals.print(out)?;
+            }
         }
         Ok(Outcome::Done)
+    }
+
+    /// What the recording says about limits and sizes; nothing comes of a drawn mask.
+    fn proposals(
+        &self,
+        loaded: &Loaded,
+        silhouette: &Silhouette,
+        figures: &Figures,
+    ) -> anyhow::Result<Option<Proposals>> {
+        let Some(folder) = &self.recording else {
+            return Ok(None);
+        };
+        let recording = Recording::open(folder, Some(frame_size(&loaded.settings)))?;
+        let pupil = Pupil {
+            silhouette,
+            figures,
+            out: &self.out,
+        };
+        let sure = Sure {
+            coverage: self.coverage,
+            confidence: self.confidence,
+        };
+        Proposals::from(loaded, &recording, &pupil, sure).map(Some)
     }
 
     fn name(&self) -> String {

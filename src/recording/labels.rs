@@ -54,6 +54,30 @@ fn parse([along_mm, across_mm, verdict, note]: [&str; 4]) -> Result<Label, LineP
     })
 }
 
+/// Labels as a table with its header; positions to a thousandth of a millimetre.
+///
+/// # Errors
+/// Those of the CSV writer.
+pub fn labels_csv(labels: &[Label]) -> Result<Vec<u8>, csv::Error> {
+    let mut table = csv::Writer::from_writer(Vec::new());
+    table.write_record(LABELS_HEADER)?;
+    for label in labels {
+        table.write_record(typed(label))?;
+    }
+    table
+        .into_inner()
+        .map_err(|error| csv::Error::from(error.into_error()))
+}
+
+fn typed(label: &Label) -> [String; 4] {
+    [
+        format!("{:.3}", label.along_mm),
+        format!("{:.3}", label.across_mm),
+        label.verdict.to_string(),
+        label.note.clone(),
+    ]
+}
+
 /// Writes `labels.csv` row by row.
 pub struct LabelWriter {
     file: PathBuf,
@@ -81,12 +105,8 @@ impl LabelWriter {
     /// # Errors
     /// It cannot be written.
     pub fn write(&mut self, label: &Label) -> Result<(), RecordingError> {
-        self.row([
-            &format!("{:.3}", label.along_mm),
-            &format!("{:.3}", label.across_mm),
-            &label.verdict.to_string(),
-            &label.note,
-        ])
+        let [along_mm, across_mm, verdict, note] = &typed(label);
+        self.row([along_mm, across_mm, verdict, note])
     }
 
     /// Writes what is still held back.

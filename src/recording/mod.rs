@@ -28,7 +28,7 @@ mod write;
 mod tests;
 
 pub use error::{LineProblem, PictureProblem, RecordingError};
-pub use labels::{Label, LabelWriter, read_labels};
+pub use labels::{Label, LabelWriter, labels_csv, read_labels};
 pub use read::{Playback, Recording};
 pub use write::Writer;
 

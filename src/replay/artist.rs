@@ -5,7 +5,7 @@ use image::RgbImage;
 use super::pictures::{Marks, Sketch, draw_part};
 use crate::belt::{Part, View};
 use crate::frames::{Frame, Gray};
-use crate::inspect::{common, limits};
+use crate::inspect::judge;
 use crate::settings::{Geometry, Settings};
 use crate::shape::{Drawing, Judge, Judged, Silhouette, Verdict};
 use crate::stage::{Level, Plan, Region, Stage, Steps};
@@ -21,15 +21,11 @@ pub struct Artist<'a> {
 impl<'a> Artist<'a> {
     /// The same steps that an inspector for these settings takes.
     pub fn new(settings: &'a Settings, taught: &[Silhouette], level: Level) -> Self {
-        let shapes = settings.shapes.iter().map(|shape| limits(settings, shape));
         Self {
             settings,
             geometry: settings.geometry(),
             stage: Stage::new(&Plan::of(settings), level),
-            judge: Judge::new(
-                taught.iter().cloned().zip(shapes).collect(),
-                common(settings),
-            ),
+            judge: judge(settings, taught),
         }
     }
 

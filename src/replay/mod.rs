@@ -14,7 +14,7 @@ pub use artist::{Artist, Sight};
 pub use drive::{Looks, Pace, drive};
 pub use outcome::{Outcome, Row, parts_csv, rows};
 
-pub use score::{Match, Score, score};
+pub use score::{LABEL_GATE, Match, Placed, Score, score};
 pub use summary::{Summary, WorstMargin, summarize};
 
 use crate::health::Durations;

@@ -1,8 +1,35 @@
 //! Verdicts against labels, matched by belt position.
 
-use crate::belt::{Part, Stretch};
+use crate::belt::{Extent, Part, Stretch};
 use crate::recording::Label;
 use crate::shape::Verdict;
+
+/// A label may lie this share of the part pitch outside the box of its part.
+pub const LABEL_GATE: f64 = 0.25;
+
+/// What matters of a part when it is held against labels.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Placed {
+    /// Everything that was ever seen of it.
+    pub extent: Extent,
+    /// Centroid along the belt.
+    pub along_mm: f64,
+    /// Centroid across the belt.
+    pub across_mm: f64,
+    /// What becomes of it.
+    pub verdict: Verdict,
+}
+
+impl From<&Part> for Placed {
+    fn from(part: &Part) -> Self {
+        Self {
+            extent: part.extent,
+            along_mm: part.along_mm,
+            across_mm: part.across_mm,
+            verdict: part.verdict,
+        }
+    }
+}
 
 /// A label and the part it belongs to, or one without the other.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -46,7 +73,7 @@ impl Score {
 /// A label belongs to the part nearest to it, at most `gate_mm` outside its box; each part takes one label so, and what
 /// is left over goes to parts that already have one (a pair that has grown together carries two labels). What lay on
 /// `rejected` belt was thrown away with it, seen or not.
-pub fn score(labels: &[Label], parts: &[Part], rejected: &[Stretch], gate_mm: f64) -> Score {
+pub fn score(labels: &[Label], parts: &[Placed], rejected: &[Stretch], gate_mm: f64) -> Score {
     let gone = |label: &Label| {
         let holds = |belt: &Stretch| (belt.from_mm..=belt.to_mm).contains(&label.along_mm);
         rejected.iter().any(holds)
@@ -81,14 +108,14 @@ pub fn score(labels: &[Label], parts: &[Part], rejected: &[Stretch], gate_mm: f6
     score
 }
 
-fn along_mm(found: &Match, labels: &[Label], parts: &[Part]) -> f64 {
+fn along_mm(found: &Match, labels: &[Label], parts: &[Placed]) -> f64 {
     let label = found.label.map(|l| labels[l].along_mm);
     label
         .or(found.part.map(|p| parts[p].along_mm))
         .unwrap_or(f64::INFINITY)
 }
 
-fn pair_up(labels: &[Label], parts: &[Part], gate_mm: f64) -> (Vec<Option<usize>>, Vec<bool>) {
+fn pair_up(labels: &[Label], parts: &[Placed], gate_mm: f64) -> (Vec<Option<usize>>, Vec<bool>) {
     let mut pairs = candidates(labels, parts, gate_mm);
     pairs.sort_by(|a, b| a.0.total_cmp(&b.0).then((a.1, a.2).cmp(&(b.1, b.2))));
     let mut of_label = vec![None; labels.len()];
@@ -106,7 +133,7 @@ fn pair_up(labels: &[Label], parts: &[Part], gate_mm: f64) -> (Vec<Option<usize>
 
 /// Pairs that are near enough, with the distance of label and centroid. Both lists are in belt order but for a few
 /// places, so only a window of parts is looked at for each label.
-fn candidates(labels: &[Label], parts: &[Part], gate_mm: f64) -> Vec<(f64, usize, usize)> {
+fn candidates(labels: &[Label], parts: &[Placed], gate_mm: f64) -> Vec<(f64, usize, usize)> {
     let mut order: Vec<usize> = (0..parts.len()).collect();
     order.sort_by(|&a, &b| parts[a].extent.lead_mm.total_cmp(&parts[b].extent.lead_mm));
     let longest_mm = parts

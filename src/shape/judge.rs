@@ -3,11 +3,11 @@
 use crate::stage::{Region, Run};
 
 use super::gauge::Gauge;
+use super::gauged::{Asked, Gauged, Sizes};
 use super::measure::Measurer;
 use super::overlay::Overlay;
 use super::pose::{Finder, Found};
-use super::severity::Against;
-use super::{Bitmap, Common, Judged, Limits, Model, Pose, Reason, Silhouette};
+use super::{Bitmap, Common, Judged, Limits, Model, Pose, Silhouette};
 
 /// A region smaller than this part of a shape is not looked at closely: it is a crumb of it at best.
 const CRUMB: f64 = 0.25;
@@ -92,45 +92,55 @@ impl Judge {
         &self.shapes
     }
 
-    /// Judges one whole region; `runs` are its own, sorted by row, then column.
-    ///
-    /// The shape with the largest overlap over union decides. A region that holds most of it and half a part more (of the
-    /// smallest shape) is `touching`; one that fits none well enough is `unknown`. In both cases the other figures say
-    /// nothing about a part, so there are no further reasons.
+    /// Judges one whole region; `runs` are its own, sorted by row, then column. See [`Gauged::verdict`].
     pub fn judge(&mut self, region: &Region, runs: &[Run]) -> Judged {
+        let gauged = self.gauge(region, runs);
+        gauged.verdict(&self.shapes[gauged.shape].1, &self.common)
+    }
+
+    /// Everything that [`Judge::judge`] needs to know of a region. The shape with the largest overlap over union is the one
+    /// that it is held against. Further figures are taken if the shape's limits ask for them and the region fits it.
+    pub fn gauge(&mut self, region: &Region, runs: &[Run]) -> Gauged {
+        let mut gauged = self.lay_on(region, runs);
+        if gauged.is_one(&self.common) {
+            let asked = Asked::by(&self.shapes[gauged.shape].1);
+            gauged.sizes = self.sizes(asked, &gauged, region, runs);
+        }
+        gauged
+    }
+
+    /// The same for limits that are not known yet: further figures are taken as `asked` for each shape, whatever fits.
+    pub fn gauge_all(&mut self, asked: &[Asked], region: &Region, runs: &[Run]) -> Gauged {
+        let mut gauged = self.lay_on(region, runs);
+        gauged.sizes = self.sizes(asked[gauged.shape], &gauged, region, runs);
+        gauged
+    }
+
+    fn sizes(&mut self, asked: Asked, gauged: &Gauged, region: &Region, runs: &[Run]) -> Sizes {
+        let branch_above_px = self.shapes[gauged.shape].1.branch_above_px;
+        asked.take(&mut self.measurer, region, runs, branch_above_px)
+    }
+
+    fn lay_on(&mut self, region: &Region, runs: &[Run]) -> Gauged {
         let (shape, found) = self.best(region, runs);
         let (missing, excess) = self
             .overlay
             .gauge(&mut self.gauge, self.common.flaw_below_px);
-        let mut against = Against::default();
-        let twice = 2 * self.overlay.outside_px() >= self.smallest_px;
-        if twice && self.overlay.covered() >= self.common.fit_at_least {
-            against.say(Reason::Touching);
-        } else if found.fit < self.common.fit_at_least {
-            against.say(Reason::Unknown);
-        } else {
-            let limits = &self.shapes[shape].1;
-            if limits.reject_flipped && found.pose.flipped {
-                against.say(Reason::Flipped);
-            }
-            against.at_most(Reason::Missing, missing.px, limits.missing_px);
-            against.at_most(Reason::Excess, excess.px, limits.excess_px);
-            against.sizes(&mut self.measurer, limits, region, runs);
-        }
-        Judged {
+        Gauged {
             shape,
             pose: found.pose,
             fit: found.fit,
+            covered: self.overlay.covered(),
+            twice: 2 * self.overlay.outside_px() >= self.smallest_px,
+            taught_px: self.taught_box(),
             missing,
             excess,
-            reasons: against.reasons,
-            severity: against.severity,
+            sizes: Sizes::default(),
         }
     }
 
-    /// The box around the taught shape as it lies on the region that was judged last: left, top, right, bottom in the
-    /// picture's pixels, the last two exclusive. Part of it may lie outside the picture.
-    pub fn taught_box(&self) -> [i32; 4] {
+    /// See [`Gauged::taught_px`].
+    fn taught_box(&self) -> [i32; 4] {
         let Overlay { origin, taught, .. } = &self.overlay;
         let [left, top, right, bottom] = taught.bounds();
         [

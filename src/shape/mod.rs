@@ -11,6 +11,7 @@ mod feret;
 mod field;
 mod findings;
 mod gauge;
+mod gauged;
 #[cfg(test)]
 mod gauge_accuracy;
 mod judge;
@@ -38,6 +39,7 @@ pub use distance::{DistanceTransform, NOWHERE};
 pub use error::ShapeError;
 pub use findings::{Finding, findings};
 pub use gauge::gauge_masks;
+pub use gauged::{Asked, Gauged, Sizes};
 pub use judge::{Drawing, Judge};
 pub use measure::{Measurer, Measures, skeleton};
 pub use model::Model;

@@ -1,8 +1,6 @@
 //! Everything against a part, and how near it is to its limits.
 
-use crate::stage::{Region, Run};
-
-use super::measure::Measurer;
+use super::gauged::Sizes;
 use super::{Limits, Reason, Reasons};
 
 /// Reasons and severity as they add up.
@@ -46,35 +44,21 @@ impl Against {
         self.severity = self.severity.max(used);
     }
 
-    /// The further limits, those that are set.
-    pub(super) fn sizes(
-        &mut self,
-        measurer: &mut Measurer,
-        limits: &Limits,
-        region: &Region,
-        runs: &[Run],
-    ) {
+    /// The further limits, those that are set; a figure that was not taken is none against the part.
+    pub(super) fn sizes(&mut self, sizes: &Sizes, limits: &Limits) {
         let whole = |range: [u32; 2]| range.map(f64::from);
-        if let Some(range) = limits.area_px {
-            self.between(region.area_px as f64, range);
-        }
-        if limits.length_px.is_some() || limits.width_px.is_some() {
-            let (length, width) = measurer.feret(region, runs);
-            for (figure, range) in [(length, limits.length_px), (width, limits.width_px)] {
-                range
-                    .into_iter()
-                    .for_each(|range| self.between(figure, range));
+        let held = [
+            (Some(sizes.area_px), limits.area_px),
+            (sizes.length_px, limits.length_px),
+            (sizes.width_px, limits.width_px),
+            (sizes.holes.map(f64::from), limits.holes.map(whole)),
+            (sizes.boundary_px, limits.boundary_px),
+            (sizes.branches.map(f64::from), limits.branches.map(whole)),
+        ];
+        for (figure, range) in held {
+            if let (Some(figure), Some(range)) = (figure, range) {
+                self.between(figure, range);
             }
-        }
-        if let Some(range) = limits.holes {
-            self.between(f64::from(measurer.holes(region, runs)), whole(range));
-        }
-        if let Some(range) = limits.boundary_px {
-            self.between(measurer.boundary(region, runs) as f64, range);
-        }
-        if let Some(range) = limits.branches {
-            let branches = measurer.branches(region, runs, limits.branch_above_px);
-            self.between(f64::from(branches), whole(range));
         }
     }
 }
@@ -82,6 +66,8 @@ impl Against {
 #[cfg(test)]
 mod tests {
     use super::super::bitmap::tests::bitmap;
+    use super::super::gauged::Asked;
+    use super::super::measure::Measurer;
     use super::*;
 
     #[test]
@@ -146,7 +132,8 @@ mod tests {
         };
         let reasons = |limits: &Limits| {
             let mut against = Against::default();
-            against.sizes(&mut Measurer::default(), limits, &region, &runs);
+            let sizes = Asked::by(limits).take(&mut Measurer::default(), &region, &runs, 3.0);
+            against.sizes(&sizes, limits);
             against.reasons.to_string()
         };
         assert_eq!(reasons(&limits), "");

@@ -28,6 +28,11 @@ impl Fill {
         }
     }
 
+    /// Closes holes of up to this size from now on.
+    pub fn set_limit(&mut self, limit_px: u64) {
+        self.limit_px = limit_px;
+    }
+
     /// Writes `runs` with its small holes closed to `filled`.
     pub fn run(&mut self, runs: &RunRows, filled: &mut RunRows) {
         filled.clear();

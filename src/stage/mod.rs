@@ -61,11 +61,13 @@ mod fill;
 mod regions;
 mod threshold;
 
+mod again;
 mod pipeline;
 #[cfg(test)]
 mod plain;
 mod steps;
 
+pub use again::{Again, OtsuLevels};
 pub use kernels::{KernelError, Level};
 pub use morphology::{dilation, erosion};
 pub use pipeline::Stage;

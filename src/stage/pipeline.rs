@@ -20,14 +20,14 @@ pub struct Stage {
     values: Vec<u8>,
     histogram: Histogram,
     /// One row of foreground.
-    bits: Vec<u64>,
+    pub(super) bits: Vec<u64>,
     /// One row of certain foreground (hysteresis).
-    sure: Vec<u64>,
-    hysteresis: Hysteresis,
+    pub(super) sure: Vec<u64>,
+    pub(super) hysteresis: Hysteresis,
     pub(super) raw: RunRows,
     pub(super) filled: RunRows,
-    fill: Fill,
-    regions: Regions,
+    pub(super) fill: Fill,
+    pub(super) regions: Regions,
     pub(super) scene: Scene,
 }
 
@@ -148,6 +148,7 @@ impl Stage {
 #[cfg(test)]
 mod tests {
     use super::*;
+    use crate::stage::again::{Again, OtsuLevels};
     use crate::stage::plain::{self, Grid};
     use crate::stage::plan::{Element, Polarity};
     use proptest::prelude::*;
@@ -232,6 +233,12 @@ mod tests {
                 let as_set: Vec<bool> = steps.filled.iter().map(|&v| v == 255).collect();
                 prop_assert_eq!(&as_set, &filled.cells);
                 prop_assert_eq!(stage.run(gray), &scene, "{}", level.name());
+                let threshold = plan.threshold.at(OtsuLevels::default().of(&steps.top_hat));
+                let mut again = Again::new(&plan, level);
+                let (fill, speck) = (plan.fill_below_px, plan.speck_below_px);
+                again.run(&steps.top_hat, Threshold::Fixed { level: 0 }, 0, 1);
+                let scene_again = again.run(&steps.top_hat, threshold, fill, speck);
+                prop_assert_eq!(scene_again, &scene, "{} again", level.name());
             }
         }
     }

@@ -45,6 +45,11 @@ impl Regions {
         }
     }
 
+    /// Drops what is smaller than this from now on.
+    pub fn set_speck(&mut self, speck_below_px: u64) {
+        self.speck_below_px = speck_below_px;
+    }
+
     /// A scene with room for every picture of this size.
     pub fn scene(&self, width_px: usize, height_px: usize) -> Scene {
         let pixels = (width_px * height_px) as u64;

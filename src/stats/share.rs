@@ -21,6 +21,9 @@ impl Share {
     /// The usual confidence.
     pub const P95: Self = Self(0.95);
 
+    /// All but certain.
+    pub const P999: Self = Self(0.999);
+
     /// `None` unless `value` lies above 0 and below 1.
     pub fn new(value: f64) -> Option<Self> {
         (value > 0.0 && value < 1.0).then_some(Self(value))

@@ -5,7 +5,7 @@ use maud::{Markup, html};
 use super::chart::{Plot, n};
 use super::facts::{Case, Facts, Figures};
 use super::page::{figure, table};
-use super::words::{Nouns, Rounding, counted, mm, percent};
+use super::words::{FALSE_REJECTS, MISSES, Rounding, counted, mm, percent};
 use crate::recording::Label;
 use crate::replay::{Match, Score};
 use crate::shape::Verdict;
@@ -13,20 +13,6 @@ use crate::stats::{Count, Share, Tradeoff, fewest_without_failure};
 
 /// Rows of a list that are written out.
 const LISTED: usize = 100;
-
-const MISSES: Nouns = Nouns {
-    one: "miss",
-    many: "misses",
-    among_one: "bad part",
-    among_many: "bad parts",
-};
-
-const FALSE_REJECTS: Nouns = Nouns {
-    one: "false reject",
-    many: "false rejects",
-    among_one: "good part",
-    among_many: "good parts",
-};
 
 /// What labels and verdicts count up to.
 #[derive(Clone, Copy, Debug, PartialEq)]

@@ -93,6 +93,22 @@ impl Nouns {
     }
 }
 
+/// Bad parts that would pass.
+pub const MISSES: Nouns = Nouns {
+    one: "miss",
+    many: "misses",
+    among_one: "bad part",
+    among_many: "bad parts",
+};
+
+/// Good parts that would be rejected.
+pub const FALSE_REJECTS: Nouns = Nouns {
+    one: "false reject",
+    many: "false rejects",
+    among_one: "good part",
+    among_many: "good parts",
+};
+
 /// Hundredths of a millimetre; zero has no sign.
 pub fn mm(value: f64) -> String {
     let text = format!("{value:.2}");
@@ -111,13 +127,6 @@ pub fn counted(count: usize, one: &str, many: &str) -> String {
 #[cfg(test)]
 mod tests {
     use super::*;
-
-    const MISSES: Nouns = Nouns {
-        one: "miss",
-        many: "misses",
-        among_one: "bad part",
-        among_many: "bad parts",
-    };
 
     #[test]
     fn bounds_round_away_from_what_was_seen() {
