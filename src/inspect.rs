@@ -3,6 +3,7 @@
 
 use crate::belt::{Cut, Extent, Stretch, View};
 use crate::frames::Frame;
+use crate::laps::{Step, Watch};
 use crate::settings::{self, FaceDown, Geometry, Settings, Travel};
 use crate::shape::{Common, Judge, Judged, Limits, Reason, Silhouette};
 use crate::stage::{self, Level, Region, Stage};
@@ -162,7 +163,13 @@ impl Inspector {
 
     /// Looks at `frame`, which must have the size that the settings state, and fills `look`.
     pub fn inspect(&mut self, frame: &Frame, look: &mut Look) {
-        let scene = self.stage.run(frame.gray().window(self.geometry.window));
+        self.inspect_watched(frame, look, &mut ());
+    }
+
+    /// The same, with `watch` told of the end of each step.
+    pub fn inspect_watched(&mut self, frame: &Frame, look: &mut Look, watch: &mut impl Watch) {
+        let picture = frame.gray().window(self.geometry.window);
+        let scene = self.stage.run_watched(picture, watch);
         look.captured_us = frame.captured_us;
         look.belt_mm = frame.belt_mm;
         look.specks = scene.specks;
@@ -172,7 +179,11 @@ impl Inspector {
                 [region.x_min, region.y_min, region.x_max, region.y_max].map(|px| px as i32);
             let mut cut = cut(&self.geometry, box_px);
             let runs = &scene.runs[region.runs.clone()];
-            let mut judged = (!cut.any()).then(|| self.judge.judge(region, runs));
+            let mut judged = (!cut.any()).then(|| {
+                let judged = self.judge.judge(region, runs);
+                watch.lap(Step::Part);
+                judged
+            });
             if let Some(of) = &judged {
                 cut = cut_of_shape(&self.geometry, &self.judge, of);
                 judged = judged.filter(|_| !cut.any());

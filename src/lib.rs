@@ -13,6 +13,8 @@ pub mod units;
 
 pub mod clock;
 
+pub mod laps;
+
 pub mod health;
 
 pub mod settings;
@@ -34,5 +36,7 @@ pub mod sorter;
 pub mod recording;
 
 pub mod replay;
+
+pub mod pace;
 
 pub mod cli;

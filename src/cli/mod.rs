@@ -16,6 +16,7 @@ mod draw;
 mod files;
 mod interrupt;
 mod judge;
+mod pace;
 mod replay;
 mod results;
 mod station;
@@ -44,6 +45,7 @@ enum Command {
     Teach(teach::Args),
     Judge(judge::Args),
     Draw(draw::Args),
+    Pace(pace::Args),
 }
 
 /// How a command ended when nothing failed.
@@ -75,6 +77,7 @@ impl Cli {
             Command::Teach(args) => args.run(&mut out),
             Command::Judge(args) => args.run(&mut out),
             Command::Draw(args) => args.run(),
+            Command::Pace(args) => args.run(&mut out),
         };
         let flushed = out.flush();
         match outcome.and_then(|outcome| Ok(flushed.map(|()| outcome)?)) {
