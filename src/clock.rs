@@ -35,9 +35,40 @@ impl Monotonic {
     }
 }
 
+/// Measures how long something takes, in nanoseconds.
+#[derive(Clone, Copy, Debug)]
+pub struct Stopwatch(Instant);
+
+impl Stopwatch {
+    /// Starts it.
+    pub fn start() -> Self {
+        Self(Instant::now())
+    }
+
+    /// The time since it was started or last lapped; it starts anew.
+    pub fn lap_ns(&mut self) -> u64 {
+        let now = Instant::now();
+        let since = now.duration_since(self.0);
+        self.0 = now;
+        u64::try_from(since.as_nanos()).unwrap_or(u64::MAX)
+    }
+}
+
 #[cfg(test)]
 mod tests {
     use super::*;
+
+    #[test]
+    fn laps_add_up_to_the_whole() {
+        let (mut whole, mut laps) = (Stopwatch::start(), Stopwatch::start());
+        let clock = Monotonic::reading(Micros::ZERO);
+        clock.sleep_until(Micros(400));
+        let first = laps.lap_ns();
+        clock.sleep_until(Micros(700));
+        let second = laps.lap_ns();
+        assert!(first >= 400_000, "{first}");
+        assert!(whole.lap_ns() >= first + second);
+    }
 
     #[test]
     fn starts_where_told_and_never_goes_back() {

@@ -3,6 +3,7 @@
 
 use crate::belt::{Cut, Extent, Stretch, View};
 use crate::frames::Frame;
+use crate::laps::{Step, Watch};
 use crate::settings::{self, FaceDown, Geometry, Settings, Travel};
 use crate::shape::{Common, Gauged, Judge, Judged, Limits, Reason, Silhouette};
 use crate::stage::{self, Level, Region, Stage};
@@ -238,14 +239,24 @@ impl Inspector {
 
     /// Looks at `frame`, which must have the size that the settings state, and fills `look`.
     pub fn inspect(&mut self, frame: &Frame, look: &mut Look) {
-        let scene = self.stage.run(frame.gray().window(self.geometry.window));
+        self.inspect_watched(frame, look, &mut ());
+    }
+
+    /// The same, with `watch` told of the end of each step.
+    pub fn inspect_watched(&mut self, frame: &Frame, look: &mut Look, watch: &mut impl Watch) {
+        let picture = frame.gray().window(self.geometry.window);
+        let scene = self.stage.run_watched(picture, watch);
         look.captured_us = frame.captured_us;
         look.belt_mm = frame.belt_mm;
         look.specks = scene.specks;
         look.spots.clear();
         for region in &scene.regions {
             let runs = &scene.runs[region.runs.clone()];
-            let sight = Sight::of(&self.geometry, region, || self.judge.gauge(region, runs));
+            let sight = Sight::of(&self.geometry, region, || {
+                let gauged = self.judge.gauge(region, runs);
+                watch.lap(Step::Part);
+                gauged
+            });
             look.spots.push(self.rules.spot(&sight));
         }
     }

@@ -13,6 +13,8 @@ pub mod units;
 
 pub mod clock;
 
+pub mod laps;
+
 pub mod health;
 
 pub mod stats;
@@ -38,5 +40,7 @@ pub mod recording;
 pub mod replay;
 
 pub mod tuning;
+
+pub mod pace;
 
 pub mod cli;

@@ -18,6 +18,7 @@ mod files;
 mod interrupt;
 mod judge;
 mod mark;
+mod pace;
 mod propose;
 mod replay;
 mod report;
@@ -54,6 +55,7 @@ enum Command {
     Compare(compare::Args),
     Sweep(sweep::Args),
     Draw(draw::Args),
+    Pace(pace::Args),
 }
 
 /// How a command ended when nothing failed.
@@ -88,6 +90,7 @@ impl Cli {
             Command::Compare(args) => args.run(&mut out),
             Command::Sweep(args) => args.run(&mut out),
             Command::Draw(args) => args.run(),
+            Command::Pace(args) => args.run(&mut out),
         };
         let flushed = out.flush();
         match outcome.and_then(|outcome| Ok(flushed.map(|()| outcome)?)) {

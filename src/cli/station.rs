@@ -49,6 +49,11 @@ impl Station {
         }
     }
 
+    /// The kernels in use.
+    pub(super) fn level(&self) -> Level {
+        self.level
+    }
+
     pub(super) fn inspector(&self) -> Inspector {
         Inspector::new(self.settings(), &self.taught, self.level)
     }

@@ -10,6 +10,7 @@ use super::scene::Scene;
 use super::threshold::{self, Hysteresis};
 use super::tophat::TopHat;
 use crate::frames::Gray;
+use crate::laps::{Step, Watch};
 
 /// The stage with its buffers. They have room for the worst picture of the planned size: [`Stage::run`] allocates nothing.
 pub struct Stage {
@@ -72,6 +73,14 @@ impl Stage {
     /// # Panics
     /// If the picture has not the planned size.
     pub fn run(&mut self, picture: Gray<'_>) -> &Scene {
+        self.run_watched(picture, &mut ())
+    }
+
+    /// The same, with `watch` told of the end of each step.
+    ///
+    /// # Panics
+    /// As [`Stage::run`] does.
+    pub fn run_watched(&mut self, picture: Gray<'_>, watch: &mut impl Watch) -> &Scene {
         assert_eq!(
             (picture.width_px, picture.height_px),
             (self.plan.width_px, self.plan.height_px),
@@ -79,28 +88,34 @@ impl Stage {
         );
         self.raw.clear();
         self.scene.level = match self.plan.threshold {
-            Threshold::Fixed { level } => self.above(picture, level),
-            Threshold::Otsu { floor } => self.above_otsu(picture, floor),
-            Threshold::Hysteresis { low, high } => self.above_two(picture, low, high),
+            Threshold::Fixed { level } => self.above(picture, level, watch),
+            Threshold::Otsu { floor } => self.above_otsu(picture, floor, watch),
+            Threshold::Hysteresis { low, high } => self.above_two(picture, [low, high], watch),
         };
         self.fill.run(&self.raw, &mut self.filled);
+        watch.lap(Step::Fill);
         self.regions.run(&self.filled, &mut self.scene);
+        watch.lap(Step::Regions);
         &self.scene
     }
 
-    fn above(&mut self, picture: Gray<'_>, level: u8) -> u8 {
+    fn above(&mut self, picture: Gray<'_>, level: u8, watch: &mut impl Watch) -> u8 {
         let Self {
             top_hat, bits, raw, ..
         } = self;
         let kernels = self.level;
-        top_hat.run(picture, |_, upper, lower| {
-            kernels.mark_difference(upper, lower, level, bits);
-            raw.push_row(bits);
+        top_hat.run(picture, |band| {
+            watch.lap(Step::TopHat);
+            band.each(|_, upper, lower| {
+                kernels.mark_difference(upper, lower, level, bits);
+                raw.push_row(bits);
+            });
+            watch.lap(Step::Threshold);
         });
         level
     }
 
-    fn above_otsu(&mut self, picture: Gray<'_>, floor: u8) -> u8 {
+    fn above_otsu(&mut self, picture: Gray<'_>, floor: u8, watch: &mut impl Watch) -> u8 {
         let Self {
             top_hat,
             bits,
@@ -111,20 +126,25 @@ impl Stage {
         } = self;
         let kernels = self.level;
         let width = self.plan.width_px;
-        top_hat.run(picture, |y, upper, lower| {
-            let row = &mut values[y * width..][..width];
-            kernels.subtract(upper, lower, row);
-            histogram.add(row);
+        top_hat.run(picture, |band| {
+            watch.lap(Step::TopHat);
+            band.each(|y, upper, lower| {
+                let row = &mut values[y * width..][..width];
+                kernels.subtract(upper, lower, row);
+                histogram.add(row);
+            });
+            watch.lap(Step::Threshold);
         });
         let level = threshold::otsu_level(&histogram.take()).max(floor);
         for row in values.chunks_exact(width.max(1)) {
             kernels.mark(row, level, bits);
             raw.push_row(bits);
         }
+        watch.lap(Step::Threshold);
         level
     }
 
-    fn above_two(&mut self, picture: Gray<'_>, low: u8, high: u8) -> u8 {
+    fn above_two(&mut self, picture: Gray<'_>, [low, high]: [u8; 2], watch: &mut impl Watch) -> u8 {
         let Self {
             top_hat,
             bits,
@@ -135,12 +155,17 @@ impl Stage {
         } = self;
         let kernels = self.level;
         hysteresis.restart();
-        top_hat.run(picture, |_, upper, lower| {
-            kernels.mark_difference(upper, lower, low, bits);
-            kernels.mark_difference(upper, lower, high, sure);
-            hysteresis.push_row(bits, sure);
+        top_hat.run(picture, |band| {
+            watch.lap(Step::TopHat);
+            band.each(|_, upper, lower| {
+                kernels.mark_difference(upper, lower, low, bits);
+                kernels.mark_difference(upper, lower, high, sure);
+                hysteresis.push_row(bits, sure);
+            });
+            watch.lap(Step::Threshold);
         });
         hysteresis.keep_sure(raw);
+        watch.lap(Step::Threshold);
         low
     }
 }

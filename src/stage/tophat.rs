@@ -39,6 +39,29 @@ pub struct TopHat {
     diagonals: Option<Diagonals>,
 }
 
+/// Some rows of the top-hat: the difference of two pictures.
+pub(crate) struct Band<'a> {
+    rows: Range<usize>,
+    width: usize,
+    upper: Rows<'a>,
+    lower: Rows<'a>,
+}
+
+impl Band<'_> {
+    /// Calls `sink` with every row in order: its number, and two rows whose difference (first minus second, never
+    /// negative) is the top-hat.
+    #[inline]
+    pub fn each(self, mut sink: impl FnMut(usize, &[u8], &[u8])) {
+        for (i, y) in self.rows.enumerate() {
+            sink(
+                y,
+                self.upper.row(i, self.width),
+                self.lower.row(i, self.width),
+            );
+        }
+    }
+}
+
 impl TopHat {
     /// Makes the buffers for the size, the polarity and the element of `plan`.
     pub fn new(plan: &Plan, level: Level) -> Self {
@@ -82,14 +105,15 @@ impl TopHat {
             (self.width, self.height)
         );
         let (level, width) = (self.level, self.width);
-        self.run(picture, |y, upper, lower| {
-            level.subtract(upper, lower, &mut out[y * width..][..width]);
+        self.run(picture, |band| {
+            band.each(|y, upper, lower| {
+                level.subtract(upper, lower, &mut out[y * width..][..width])
+            });
         });
     }
 
-    /// Calls `sink` with every row in order: its number, and two rows whose difference (first minus second, never
-    /// negative) is the top-hat.
-    pub(crate) fn run(&mut self, picture: Gray, mut sink: impl FnMut(usize, &[u8], &[u8])) {
+    /// Calls `sink` with all rows in order, some at a time.
+    pub(crate) fn run(&mut self, picture: Gray, mut sink: impl FnMut(Band)) {
         self.down_first.restart();
         self.down_second.restart();
         self.middle.restart();
@@ -127,13 +151,8 @@ impl TopHat {
     }
 
     /// The last pass down the columns, as far as `ready` rows allow.
-    fn grow_rows(
-        &mut self,
-        picture: Gray,
-        ready: usize,
-        sink: &mut impl FnMut(usize, &[u8], &[u8]),
-    ) {
-        let (width, stride) = (self.width, self.width.next_multiple_of(LINE));
+    fn grow_rows(&mut self, picture: Gray, ready: usize, sink: &mut impl FnMut(Band)) {
+        let stride = self.width.next_multiple_of(LINE);
         while let Some(rows) = self.down_second.upcoming(ready) {
             let (top, src) = match &self.diagonals {
                 Some(diagonals) => (0, diagonals.grown()),
@@ -144,13 +163,21 @@ impl TopHat {
                 stride_px: stride,
             };
             self.down_second.step(self.level, ready, top, src, band);
-            for (i, y) in rows.enumerate() {
-                let hull = &self.band[i * stride..][..width];
-                match self.polarity {
-                    Polarity::Bright => sink(y, picture.row(y), hull),
-                    Polarity::Dark => sink(y, hull, picture.row(y)),
-                }
-            }
+            let hull = Rows {
+                pixels: &self.band,
+                stride_px: stride,
+            };
+            let seen = rows_of(picture).from(rows.start);
+            let (upper, lower) = match self.polarity {
+                Polarity::Bright => (seen, hull),
+                Polarity::Dark => (hull, seen),
+            };
+            sink(Band {
+                rows,
+                width: self.width,
+                upper,
+                lower,
+            });
         }
     }
 
@@ -210,13 +237,15 @@ mod tests {
     fn run(top_hat: &mut TopHat, picture: &Grid<u8>) -> Grid<u8> {
         let mut out = Grid::new(picture.width, picture.height, |_, _| 0);
         let mut next = 0;
-        top_hat.run(gray(picture), |y, upper, lower| {
-            assert_eq!(y, next, "rows come in order");
-            next += 1;
-            let row = &mut out.cells[y * picture.width..][..picture.width];
-            for ((out, u), l) in row.iter_mut().zip(upper).zip(lower) {
-                *out = u.checked_sub(*l).expect("a top-hat is never negative");
-            }
+        top_hat.run(gray(picture), |band| {
+            band.each(|y, upper, lower| {
+                assert_eq!(y, next, "rows come in order");
+                next += 1;
+                let row = &mut out.cells[y * picture.width..][..picture.width];
+                for ((out, u), l) in row.iter_mut().zip(upper).zip(lower) {
+                    *out = u.checked_sub(*l).expect("a top-hat is never negative");
+                }
+            });
         });
         assert_eq!(next, picture.height);
         out
@@ -475,9 +504,14 @@ mod tests {
         };
         let mut top_hat = TopHat::new(&plan(&cut, Polarity::Bright, element), Level::SCALAR);
         let expected = run(&mut top_hat, &cut);
-        top_hat.run(window, |y, upper, lower| {
-            let row: Vec<u8> = upper.iter().zip(lower).map(|(u, l)| u - l).collect();
-            assert_eq!(row, expected.cells[y * 20..][..20]);
+        let mut rows = 0;
+        top_hat.run(window, |band| {
+            band.each(|y, upper, lower| {
+                let row: Vec<u8> = upper.iter().zip(lower).map(|(u, l)| u - l).collect();
+                assert_eq!(row, expected.cells[y * 20..][..20]);
+                rows += 1;
+            });
         });
+        assert_eq!(rows, 17);
     }
 }
