@@ -283,7 +283,12 @@ impl Sides {
             };
         };
         let placed: Vec<Placed> = parts().map(Placed::from).collect();
-        let score = score(labels, &placed, &[], settings.belt.part_pitch_mm * LABEL_GATE);
+        let score = score(
+            labels,
+            &placed,
+            &[],
+            settings.belt.part_pitch_mm * LABEL_GATE,
+        );
         let side = |wanted: Verdict| -> Vec<Part> {
             let pairs = score
                 .matches

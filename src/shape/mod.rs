@@ -11,9 +11,9 @@ mod feret;
 mod field;
 mod findings;
 mod gauge;
-mod gauged;
 #[cfg(test)]
 mod gauge_accuracy;
+mod gauged;
 mod judge;
 mod measure;
 mod model;

@@ -4,8 +4,8 @@ use maud::{Markup, html};
 
 use super::change::{Change, Comparison, Seen};
 use crate::recording::RecordingError;
-use crate::replay::report::page::{Section, page, table};
 use crate::replay::report::album::Album;
+use crate::replay::report::page::{Section, page, table};
 use crate::replay::report::words::{counted, mm};
 
 /// Pictures of parts that differ, and of parts near a flip; more would make the file too large to open.

@@ -5,8 +5,8 @@ use maud::{Markup, html};
 use super::change_page::said;
 use super::mark::Proposal;
 use crate::recording::RecordingError;
-use crate::replay::report::page::{Section, page};
 use crate::replay::report::album::Album;
+use crate::replay::report::page::{Section, page};
 use crate::replay::report::words::{counted, mm};
 
 /// A sheet of pictures in the order of the rows, each with its line in `labels.csv`; proposals only, at most `most`.
