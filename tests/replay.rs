@@ -180,7 +180,7 @@ fn belt_that_no_frame_shows_is_unseen_and_rejected_and_nothing_else_changes() {
     };
     assert!(parts(&whole).len() > 10);
     assert_eq!(parts(&whole), parts(&cut));
-    let open_over_gap = cut["signals"].as_array().unwrap().len() > 0;
+    let open_over_gap = !cut["signals"].as_array().unwrap().is_empty();
     assert!(open_over_gap && cut["summary"]["unseen_mm"].as_f64().unwrap() > 39.9);
 }
 

@@ -199,7 +199,7 @@ struct Limits {
 }
 
 const NOTES_HEAD: &str = "\
-# A drawing, not a camera's recording. `beltwright draw` made it from the scene, the number of parts, the seed and the
+# A drawing, not a camera's recording. `beltwright draw` made it from the scene, the number of parts, a seed and the
 # settings below, and makes it again from them. labels.csv and truth.csv follow from the drawn geometry alone. A label
 # stands for what the camera sees as one thing: two parts that touch have one label, in their middle, and a row each in
 # truth.csv. `missing_mm` there is how deep a bite goes, `excess_mm` how far a burr sticks out, both against the shape

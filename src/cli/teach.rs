@@ -73,13 +73,13 @@ impl Args {
         let (lesson, notes) = match (&self.recording, &self.mask) {
             (Some(folder), _) => (
                 Some(learn(folder, settings)?),
-                format!("taught from {}", folder.display()),
+                format!("taught from {}", plain_name(folder)),
             ),
             (None, mask) => (
                 None,
                 format!(
                     "drawn mask {}",
-                    mask.as_deref().unwrap_or(Path::new("")).display()
+                    mask.as_deref().map(plain_name).unwrap_or_default()
                 ),
             ),
         };
@@ -149,6 +149,14 @@ impl Args {
         let stem = self.out.file_stem().unwrap_or_default().to_string_lossy();
         self.name.clone().unwrap_or_else(|| stem.into_owned())
     }
+}
+
+/// Without the folders: they mean nothing on another PC.
+fn plain_name(file: &Path) -> String {
+    file.file_name()
+        .unwrap_or_default()
+        .to_string_lossy()
+        .into_owned()
 }
 
 /// One whole view of a part, and how far it is from the middle of the picture.

@@ -53,7 +53,11 @@ fn nearest<'f>(facts: &'f Facts<'_>) -> Vec<&'f Case<'f>> {
     near.into_iter().map(|(_, case)| case).collect()
 }
 
-fn sheet(
+/// The first `most` of `cases`.
+///
+/// # Errors
+/// Those of reading frames.
+pub fn sheet(
     cases: &[&Case<'_>],
     most: usize,
     album: &mut Album<'_>,
@@ -73,7 +77,8 @@ fn sheet(
     })
 }
 
-fn card(case: &Case<'_>, picture: &Markup) -> Markup {
+/// A part with its picture and what is to be said of it.
+pub fn card(case: &Case<'_>, picture: &Markup) -> Markup {
     let part = case.part;
     html! {
         figure {

@@ -4,18 +4,18 @@
 //! shown, so memory does not grow with the length of the recording. The page is the same on every run, but for the section
 //! on times.
 
+pub mod album;
 pub mod chart;
 pub mod facts;
+pub mod gallery;
 pub mod page;
 pub mod picture;
 pub mod words;
 
 mod agreement;
-pub mod album;
 mod belt;
 mod counts;
 mod drift;
-mod gallery;
 mod overlay;
 mod source;
 mod spread;

@@ -101,12 +101,11 @@ def check_factors(oracle):
                 worst = max(worst, abs(at / confidence - 1))
     print(f"   one-sided factors against the noncentral t: largest relative difference of the chance {worst:.1e}")
     worst = {"exact": 0.0, "Howe": 0.0}
-    for n in (10, 30, 43, 100):
-        for coverage, confidence in ((0.9, 0.99), (0.99, 0.95), (0.999, 0.95)):
-            ours = oracle.ask("factors", n=n, coverage=coverage, confidence=confidence)["two_sided"]
-            howe = norm.ppf((1 + coverage) / 2) * ((n - 1) * (1 + 1 / n) / chi2.ppf(1 - confidence, n - 1)) ** 0.5
-            for name, wanted in (("exact", exact_two_sided(n, coverage, confidence)), ("Howe", howe)):
-                worst[name] = max(worst[name], abs(ours / wanted - 1))
+    for n, coverage, confidence in ((10, 0.9, 0.99), (10, 0.999, 0.95), (43, 0.9, 0.99), (100, 0.99, 0.95)):
+        ours = oracle.ask("factors", n=n, coverage=coverage, confidence=confidence)["two_sided"]
+        howe = norm.ppf((1 + coverage) / 2) * ((n - 1) * (1 + 1 / n) / chi2.ppf(1 - confidence, n - 1)) ** 0.5
+        for name, wanted in (("exact", exact_two_sided(n, coverage, confidence)), ("Howe", howe)):
+            worst[name] = max(worst[name], abs(ours / wanted - 1))
     assert worst["exact"] < 1e-6 and worst["Howe"] < 0.01, worst
     print(f"   two-sided factors: {worst['exact']:.1e} from the integral, {worst['Howe']:.1e} from Howe's approximation")
     # Printed to three places: ISO 16269-6 and NBS Handbook 91, tables of one-sided factors, 95 % confidence (from memory);
