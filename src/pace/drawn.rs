@@ -45,7 +45,10 @@ pub fn drawn_frames(settings: &Settings) -> Result<(Scene, Vec<Frame>), DrawnErr
     while frames.len() < wanted {
         let Ok(more) = belt.next_into(&mut frame);
         assert!(more, "there are always more parts");
-        if frame.belt_mm.is_some_and(|belt_mm| belt_mm >= FULL * view_mm) {
+        if frame
+            .belt_mm
+            .is_some_and(|belt_mm| belt_mm >= FULL * view_mm)
+        {
             frames.push(frame.clone());
         }
     }

@@ -18,6 +18,7 @@ import time
 import cv2
 import numpy as np
 
+import whole_frame
 from oracle import Oracle
 
 SIZES = [(1280, 1024), (640, 480), (1920, 1080)]
@@ -115,6 +116,19 @@ def rows_of_size(bench, width, height):
     bench.row(f"{name} stage 81 px with Otsu against copying the frame", stage(["otsu", 20]), copy, at_most=True)
 
 
+def whole_frame_row(bench):
+    """Everything up to the figures of ten parts. The peer's distance maps are made when the shape is taught, as ours are."""
+    picture, shape = whole_frame.picture(), whole_frame.taught()
+    taught = bench.oracle.store(shape)
+    request = bench.oracle.store(picture) | {"element": [81, 81], "threshold": ["fixed", LEVEL], "fill": 10**9,
+                                             "taught": taught["picture"], "taught_width": taught["width"]}
+    gauge, element = whole_frame.OpenCvGauge(shape), np.ones((81, 81), np.uint8)
+    peer = lambda: gauge.parts(opencv_chain(picture, element))
+    whole_frame.check_same(bench.oracle.ask("whole_frame", level=bench.level, speck=1, **request)["parts"], peer())
+    ours = bench.ours(work="whole_frame", speck=1, **request)
+    bench.row("1280x1024 whole frame, 10 parts, OpenCV chain and gauge", ours, bench.theirs(peer), 5)
+
+
 def other_crates(bench):
     """Two Rust libraries on the same picture, for comparison; they are slow, so few repetitions."""
     width, height = SIZES[0]
@@ -143,6 +157,7 @@ def main():
         bench = Bench(oracle, options.repeat, level)
         for size in SIZES:
             rows_of_size(bench, *size)
+        whole_frame_row(bench)
         other_crates(bench)
     for work in bench.short:
         print(f"falls short: {work}", file=sys.stderr)
