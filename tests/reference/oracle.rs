@@ -4,15 +4,19 @@
 //! bytes that its `blobs` list names and counts. A request names an `op` of [`OPS`]; a gray picture comes as the path of
 //! a raw file with `width`, `height` and optionally `stride`. What goes wrong comes back as `{"error": ...}`.
 
+mod whole_frame;
+
 use std::io::{BufRead, Write};
 use std::time::Instant;
 
 use beltwright::frames::Gray;
+use beltwright::shape::Judged;
 use beltwright::stage::{
     Element, Level, Plan, Polarity, Region, Stage, Steps, Threshold, TopHat, dilation, erosion,
 };
 use serde::Deserialize;
 use serde_json::{Value, json};
+use whole_frame::WholeFrame;
 
 /// A JSON answer and the named bytes that follow it.
 type Answer = anyhow::Result<(Value, Vec<(&'static str, Vec<u8>)>)>;
@@ -27,6 +31,7 @@ const OPS: &[(&str, Op)] = &[
     ("dilation", |request, _| eroded(request, dilation)),
     ("top_hat", top_hat),
     ("stage", stage),
+    ("whole_frame", whole_frame),
     ("time", time),
 ];
 
@@ -58,6 +63,9 @@ struct Request {
     fill: u64,
     #[serde(default)]
     speck: u64,
+    /// A raw mask file of the taught shape, with its row length.
+    taught: Option<String>,
+    taught_width: Option<usize>,
 }
 
 fn main() -> anyhow::Result<()> {
@@ -227,6 +235,31 @@ fn stage(request: &Request, _: &mut Option<Timed>) -> Answer {
     Ok((answer, blobs))
 }
 
+impl Request {
+    fn whole_frame(&self, picture: &Picture) -> anyhow::Result<WholeFrame> {
+        let (Some(taught), Some(width)) = (&self.taught, self.taught_width) else {
+            anyhow::bail!("taught and taught_width are needed");
+        };
+        let stage = Stage::new(&self.plan(picture)?, self.level()?);
+        WholeFrame::new(stage, &std::fs::read(taught)?, width)
+    }
+}
+
+fn whole_frame(request: &Request, _: &mut Option<Timed>) -> Answer {
+    let picture = request.picture()?;
+    let mut frame = request.whole_frame(&picture)?;
+    let part = |(found, judged): &(Region, Judged)| {
+        let mut part = region(found);
+        part["missing"] = json!(judged.missing.px);
+        part["excess"] = json!(judged.excess.px);
+        part["angle_deg"] = json!(judged.pose.angle_deg);
+        part["fit"] = json!(judged.fit);
+        part
+    };
+    let parts: Vec<_> = frame.run(picture.gray()).iter().map(part).collect();
+    Ok((json!({"parts": parts}), vec![]))
+}
+
 fn region(r: &Region) -> Value {
     json!({
         "area": r.area_px,
@@ -278,6 +311,12 @@ fn work(request: &Request) -> anyhow::Result<Box<dyn FnMut()>> {
             let mut stage = Stage::new(&request.plan(&picture)?, request.level()?);
             Box::new(move || {
                 std::hint::black_box(stage.run(picture.gray()));
+            })
+        }
+        Some("whole_frame") => {
+            let mut frame = request.whole_frame(&picture)?;
+            Box::new(move || {
+                std::hint::black_box(frame.run(picture.gray()));
             })
         }
         Some("fast_morphology") => other_top_hat(request, picture, out)?,

@@ -1,23 +1,29 @@
 """Times the gray stage against OpenCV on one core, interleaved, and prints one JSON line per row.
 
     cargo build --release --example oracle
-    python tests/reference/speed.py target/release/examples/oracle [--repeat 30] [--level NAME]
+    python tests/reference/speed.py target/release/examples/oracle [--repeat 30] [--level NAME] [--record]
 
 `ratio` is how many times faster ours is than the peer, except in rows whose work says `against`: there it is how many times
-longer ours takes. `reach` is what it has to reach: at least, or for `against` at most. Times are medians; `best_ms` holds the shortest of both, which shows
-whether the machine was busy with something else. Ours is timed
-inside our process, OpenCV's around its call. Exit code 1 if a row with a reach falls short.
+longer ours takes. `reach` is what it has to reach: at least, or for `against` at most. Times are medians; `best_ms` holds the
+shortest of both, which shows whether the machine was busy with something else. Ours is timed inside our process, OpenCV's
+around its call. With --record the first line also names the day, the machine and the commit (see benches/record). Exit code 1
+if a row with a reach falls short.
 """
 
 import argparse
+import datetime
 import json
 import os
+import pathlib
+import platform
+import subprocess
 import sys
 import time
 
 import cv2
 import numpy as np
 
+import whole_frame
 from oracle import Oracle
 
 SIZES = [(1280, 1024), (640, 480), (1920, 1080)]
@@ -115,6 +121,19 @@ def rows_of_size(bench, width, height):
     bench.row(f"{name} stage 81 px with Otsu against copying the frame", stage(["otsu", 20]), copy, at_most=True)
 
 
+def whole_frame_row(bench):
+    """Everything up to the figures of ten parts. The peer's distance maps are made when the shape is taught, as ours are."""
+    picture, shape = whole_frame.picture(), whole_frame.taught()
+    taught = bench.oracle.store(shape)
+    request = bench.oracle.store(picture) | {"element": [81, 81], "threshold": ["fixed", LEVEL], "fill": 10**9,
+                                             "taught": taught["picture"], "taught_width": taught["width"]}
+    gauge, element = whole_frame.OpenCvGauge(shape), np.ones((81, 81), np.uint8)
+    peer = lambda: gauge.parts(opencv_chain(picture, element))
+    whole_frame.check_same(bench.oracle.ask("whole_frame", level=bench.level, speck=1, **request)["parts"], peer())
+    ours = bench.ours(work="whole_frame", speck=1, **request)
+    bench.row("1280x1024 whole frame, 10 parts, OpenCV chain and gauge", ours, bench.theirs(peer), 5)
+
+
 def other_crates(bench):
     """Two Rust libraries on the same picture, for comparison; they are slow, so few repetitions."""
     width, height = SIZES[0]
@@ -128,21 +147,35 @@ def other_crates(bench):
     bench.row(f"{width}x{height} top-hat 15 px, imageproc 0.27 (opening only)", ours, peer, repeat=3)
 
 
+def record_head():
+    """What a record begins with: when, where and of which commit."""
+    here = pathlib.Path(__file__).parent
+    git = lambda *words: subprocess.run(["git", *words], cwd=here, capture_output=True, text=True, check=True).stdout.strip()
+    models = [line.split(":", 1)[1].strip() for line in open("/proc/cpuinfo") if line.startswith(("model name", "Model"))]
+    return {"date": datetime.date.today().isoformat(), "cpu": models[0] if models else platform.machine(),
+            "processors": os.cpu_count(), "system": f"{platform.system()} {platform.release()}",
+            "commit": git("rev-parse", "--short=12", "HEAD"), "altered": bool(git("status", "--porcelain", "-uno")),
+            "load": round(os.getloadavg()[0], 2)}
+
+
 def main():
     options = argparse.ArgumentParser()
     options.add_argument("oracle")
     options.add_argument("--repeat", type=int, default=30)
     options.add_argument("--level")
+    options.add_argument("--record", action="store_true", help="begin with the day, the machine and the commit")
     options = options.parse_args()
+    head = record_head() if options.record else {}
     core = max(os.sched_getaffinity(0))
     os.sched_setaffinity(0, {core})
     cv2.setNumThreads(1)
     with Oracle(options.oracle) as oracle:
         level = options.level or oracle.ask("levels")["levels"][-1]
-        print(json.dumps({"opencv": cv2.__version__, "level": level, "core": core, "repeat": options.repeat}))
+        print(json.dumps(head | {"opencv": cv2.__version__, "level": level, "core": core, "repeat": options.repeat}), flush=True)
         bench = Bench(oracle, options.repeat, level)
         for size in SIZES:
             rows_of_size(bench, *size)
+        whole_frame_row(bench)
         other_crates(bench)
     for work in bench.short:
         print(f"falls short: {work}", file=sys.stderr)
