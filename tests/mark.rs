@@ -50,8 +50,8 @@ fn what_a_person_changed_stays() {
     };
     fs::write(&labels, text.replacen(line, &other, 1)).unwrap();
     let sheet = bench.text("sheet.html");
-    let strict = bench.changed("b.toml", &[("missing_mm =", "missing_mm = 0.5")]);
-    for settings in [&settings, &strict] {
+    let lenient = bench.changed("b.toml", &[("missing_mm =", "missing_mm = 6.0")]);
+    for settings in [&settings, &lenient] {
         done(&[
             "mark",
             &belt,
@@ -67,11 +67,15 @@ fn what_a_person_changed_stays() {
         assert_eq!(text.lines().count(), first.len() + 1, "nothing twice");
     }
     let rejects = |rows: &[std::collections::HashMap<String, String>]| {
-        rows.iter().filter(|row| row["verdict"] == "reject").count()
+        let ours = |note: &str| note.starts_with("proposed reject");
+        rows.iter()
+            .filter(|row| row["verdict"] == "reject" && ours(&row["note"]))
+            .count()
     };
+    // The one that was turned over may have been a reject.
     assert!(
-        rejects(&table(&labels)) > rejects(&first),
-        "stricter settings propose more rejects"
+        rejects(&table(&labels)) + 1 < rejects(&first),
+        "lenient settings propose fewer rejects"
     );
     assert_eq!(
         fs::read_to_string(&sheet)

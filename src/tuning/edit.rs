@@ -35,7 +35,11 @@ pub enum KeyError {
 /// The key has no place in the file. A key that is only missing in its table is added.
 pub fn set(document: &mut DocumentMut, key: &str, typed: &str) -> Result<(), KeyError> {
     let steps: Vec<String> = steps(key);
-    let (last, way) = steps.split_last().ok_or_else(|| no_such(key, "", ""))?;
+    let named = steps.iter().all(|step| !step.is_empty());
+    let (last, way) = steps
+        .split_last()
+        .filter(|_| named)
+        .ok_or_else(|| no_such(key, "", "name"))?;
     let mut item: &mut Item = document.as_item_mut();
     for (k, step) in way.iter().enumerate() {
         // A list of values ends the way: `area_mm2[1]`.

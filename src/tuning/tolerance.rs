@@ -81,16 +81,16 @@ impl GrayLevels {
         &self.values
     }
 
-    /// Half way between what nearly all of the belt stays below and what nearly all of the parts are above.
+    /// Half way up the edge of a rather dim part: there an edge is where it looks to be, however blurred.
     pub fn threshold(&self) -> Option<Proposed> {
         let split = usize::from(crate::stage::otsu_level(&self.counts));
-        let belt = quantile(&self.counts, 0..split + 1, 0.999)?;
-        let parts = quantile(&self.counts, split + 1..256, 0.05)?;
+        let belt = quantile(&self.counts, 0..split + 1, 0.5)?;
+        let parts = quantile(&self.counts, split + 1..256, 0.1)?;
         Some(Proposed {
             value: ((belt + parts) / 2) as f64,
             why: format!(
-                "after the top-hat 99.9 % of the belt is at most {belt} and 95 % of the parts at least {parts} (two classes after \
-                 Otsu 1979); half way between"
+                "after the top-hat half of the belt is at most {belt}, and nine tenths of the parts at least {parts} (two classes \
+                 after Otsu 1979); half way up the edge of a dim part"
             ),
         })
     }
